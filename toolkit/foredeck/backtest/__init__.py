@@ -1,0 +1,1 @@
+"""Forecasting again from past origins, and measuring the errors."""

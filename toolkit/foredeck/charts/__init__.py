@@ -1,0 +1,1 @@
+"""Figures made from tables."""

@@ -1,0 +1,1 @@
+"""Findings, repairs, pattern and eligibility."""

@@ -1,0 +1,1 @@
+"""Recursions and searches on bare arrays, compiled by numba."""

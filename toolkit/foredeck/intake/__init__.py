@@ -1,0 +1,1 @@
+"""From files to one tidy history."""

@@ -1,0 +1,1 @@
+"""The record of rounds: what was known, forecast, adjusted, agreed, and when."""

@@ -1,0 +1,1 @@
+"""What a round publishes for readers."""

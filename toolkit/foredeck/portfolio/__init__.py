@@ -1,0 +1,1 @@
+"""What is learned from all series together, applied to each."""

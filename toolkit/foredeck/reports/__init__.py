@@ -1,0 +1,1 @@
+"""Notebooks run, and turned into pages."""

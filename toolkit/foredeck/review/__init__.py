@@ -1,0 +1,1 @@
+"""From computed to acted on: adjustments, comparisons, changes, the watch list."""

@@ -1,0 +1,1 @@
+"""The three passes, the states of a round, publishing."""

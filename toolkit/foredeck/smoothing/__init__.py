@@ -1,0 +1,1 @@
+"""Forecasting methods, each fitted to one series."""

@@ -1,0 +1,1 @@
+"""Accessible HTML tables."""

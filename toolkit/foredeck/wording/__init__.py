@@ -1,0 +1,1 @@
+"""Sentences made from facts."""
