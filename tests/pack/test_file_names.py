@@ -14,7 +14,7 @@ from foredeck.pack import file_names as module
 from foredeck.pack.file_names import file_name, file_names
 
 SAFE = re.compile(r"[a-z0-9]+(?:(?:_|--?)[a-z0-9]+)*(?:\.[a-z2-7]{10})?\.html")
-# Names that Windows keeps for devices, whatever their ending: Microsoft, "Naming Files, Paths, and Namespaces".
+# Names that Windows keeps for devices: Microsoft, "Naming Files, Paths, and Namespaces".
 DEVICES = {"con", "prn", "aux", "nul", *(port + n for port in ("com", "lpt") for n in "0123456789")}
 NASTY = ["", ".", "..", "../../etc/passwd", "/etc/passwd", r"..\..\boot.ini", "C:\\x", "<script>x</script>",
          "a\x00b", "line\nbreak", "\x1b[31m", "x" * 500, "ä" * 500, "a/" * 250, "a/" * 29 + "a", "北/堆肥",
