@@ -48,7 +48,7 @@ class ForecastOptions:
     nonnegative: bool = True
 
     def allowed(self) -> tuple[str, ...]:
-        """Names of the methods that may be used, in the catalogue's order.
+        """Names of the methods to compute, in the catalogue's order: those asked for, and the benchmarks.
 
         Raises
         ------
@@ -59,7 +59,12 @@ class ForecastOptions:
             if name not in METHODS:
                 raise SettingsError(f"method {name!r} is not in the catalogue", where="[forecast] methods",
                                     allowed=", ".join(METHODS), do="take the name from the list")
-        return tuple(name for name in METHODS if not self.methods or name in self.methods)
+        return tuple(name for name, method in METHODS.items()
+                     if not self.methods or name in self.methods or method.family == "benchmark")
+
+    def asked_for(self, method: str) -> bool:
+        """Whether a method may speak in the forecast; benchmarks always stand beside it."""
+        return not self.methods or method in self.methods
 
 
 @dataclass(frozen=True)
@@ -67,8 +72,8 @@ class Alone:
     """What pass 1 knows of one series.
 
     `offsets[o]` counts the periods between an origin of `cube` and the closing period,
-    so that origins of different series can be laid side by side. `in_pool[m, o]` says
-    whether method m may enter a blend or choice at that origin; `pool_now` the same now.
+    so that origins of different series can be laid side by side. `pool[m, o]` says whether
+    method m may enter the blend or the choice at that origin; its last column is now.
     """
 
     series: SeriesHistory
@@ -82,8 +87,7 @@ class Alone:
     reasons: Mapping[str, str]
     cube: Cube
     offsets: NDArray[np.int64]
-    in_pool: NDArray[np.bool_]
-    pool_now: NDArray[np.bool_]
+    pool: NDArray[np.bool_]
     members: Array
     constants: tuple[Mapping[str, float], ...]
     naive_scale: NDArray[np.float64]
@@ -161,12 +165,12 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
     reasons = {name: ineligible_reason(METHODS[name].requirements, used, m, now) for name in methods}
     fits = [None if reasons[name] else fit(name, used, m, options.constants) for name in methods]
     members = np.array([np.full(horizon, np.nan) if f is None else f.forecast(horizon) for f in fits])
-    in_pool = np.array([[_may_pool(name, seen(int(k))) for k in known] for name in methods], dtype=bool)
-    in_pool &= np.isfinite(cube.forecasts).all(axis=2)
-    pool_now = np.array([_may_pool(name, now) for name in methods]) & np.isfinite(members).all(axis=1)
-    if not pool_now.any():
-        pool_now, in_pool = np.isfinite(members).all(axis=1), np.isfinite(cube.forecasts).all(axis=2)
-    if not pool_now.any():
+    asked = np.array([options.asked_for(name) for name in methods])
+    everywhere = np.isfinite(np.concatenate([cube.forecasts, members[:, None]], axis=1)).all(axis=2) & asked[:, None]
+    pool = everywhere & np.array([[_may_pool(name, seen(int(k))) for k in (*known, len(raw))] for name in methods])
+    # where the pattern leaves none of the methods asked for, any of them that runs is better than silence
+    pool = np.where(pool.any(axis=0)[None, :], pool, everywhere)
+    if not pool[:, -1].any():
         why = "; ".join(f"{name}: {text}" for name, text in reasons.items() if text)
         raise MethodError(f"{series.name} cannot be forecast: no allowed method fits it", where=series.name,
                           reason=f"no allowed method is eligible ({why})")
@@ -174,7 +178,7 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
         series=series, raw=raw, used=used, periods=periods,
         findings=find(series, closing, nonnegative=options.nonnegative), pattern=now,
         pattern_words=decompose(used, m).words, differencing_words=difference(used, m).words,
-        reasons=reasons, cube=cube, offsets=len(raw) - known, in_pool=in_pool, pool_now=pool_now,
+        reasons=reasons, cube=cube, offsets=len(raw) - known, pool=pool,
         members=members, constants=tuple({} if f is None else dict(f.constants) for f in fits),
         naive_scale=np.array([naive_error(prepare(raw[:k]), m) for k in (*known, len(raw))]),
         mase_scale=mase_scale(used, m))

@@ -58,8 +58,7 @@ def live_through(alone: Alone, style: str) -> Procedure:
     cube = alone.cube
     counts = np.append(cube.known, len(alone.raw))
     members = np.concatenate([cube.forecasts, alone.members[:, None, :]], axis=1)
-    pool = np.concatenate([alone.in_pool, alone.pool_now[:, None]], axis=1)
-    weights = np.stack([_weights(alone, style, pool[:, o], int(known)) for o, known in enumerate(counts)])
+    weights = np.stack([_weights(alone, style, alone.pool[:, o], int(known)) for o, known in enumerate(counts)])
     forecasts = np.einsum("om,moh->oh", weights, np.nan_to_num(members))
     forecasts[weights.sum(axis=1) == 0] = np.nan
     errors = np.abs(cube.actual - forecasts[:-1])[:, :OWN_LEADS]
