@@ -20,7 +20,7 @@ _HOMES = {
     "difference": "foredeck.checks.differencing",
     "smooth": "foredeck.smoothing.catalogue",
     "backtest": "foredeck.backtest.error_table",
-    "study": "foredeck.portfolio.single",
+    "study": "foredeck.study",
     "open_ledger": "foredeck.ledger.store",
 }
 _ROOMS = ("charts",)

@@ -1,0 +1,174 @@
+"""The three passes over a portfolio, and the tables of a round that come of them."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import pandas as pd
+
+from foredeck.checks.findings import find
+from foredeck.errors import ForedeckError, IntakeError
+from foredeck.intake.history import History
+from foredeck.periods import FinancialYear, period_name
+from foredeck.portfolio.alone import Alone, ForecastOptions, examine, not_forecastable
+from foredeck.portfolio.applied import apply_fit
+from foredeck.portfolio.fit import fit_portfolio
+from foredeck.portfolio.procedure import live_through
+from foredeck.portfolio.totals import totals_table
+from foredeck.review.adjustments import apply_adjustments, read_adjustments
+from foredeck.review.comparisons import read_comparison
+from foredeck.settings import Settings
+from foredeck.study import TABLES, empty_table, unadjusted, versions
+
+Progress = Callable[[str, int, int], None]
+"""Called with the stage, how many are done, and how many there are."""
+
+
+@dataclass(frozen=True)
+class Computed:
+    """A round's tables and portfolio fit, ready for the ledger."""
+
+    tables: Mapping[str, pd.DataFrame]
+    portfolio: Mapping[str, Any]
+
+
+def compute_round(history: History, closing: pd.Period, settings: Settings, progress: Progress) -> Computed:
+    """Run the three passes, apply adjustments and add up totals.
+
+    A series that cannot be forecast, or in which something fails, does not stop the
+    others: it is listed with its reason.
+
+    Parameters
+    ----------
+    history : History
+        Actuals as known now; periods after `closing` are not looked at.
+    closing : pandas.Period
+    settings : Settings
+    progress : Progress
+
+    Raises
+    ------
+    IntakeError
+        if not one series can be forecast.
+    AdjustmentError
+        if a row of the adjustments cannot be applied.
+    """
+    options = forecast_options(settings)
+    options.allowed()  # a wrong method name is the settings' fault, not a series'
+    known = history.up_to(closing)
+    alones, parts, failures = _pass_one(known, closing, options, progress)
+    if not alones:
+        raise IntakeError("not one series can be forecast", where=str(settings.source.file),
+                          do="; ".join(f"{f['series']}: {f['reason']}" for f in failures[:3]))
+    procedures = [live_through(alone, options.style) for alone in alones]
+    fit, standardised = fit_portfolio(alones, procedures, options)
+    progress("portfolio fit", 1, 1)
+    parts += [apply_fit(alone, procedure, fit) for alone, procedure in zip(alones, procedures, strict=True)]
+    tables = {name: _joined(parts, name, known.names) for name in
+              ("series", "actuals", "findings", "eligibility", "error_table", "members", "forecasts", "reliability")}
+    tables["failures"] = pd.DataFrame(failures) if failures else empty_table("failures")
+    tables["adjustments"], tables["adjusted"] = _adjusted(tables, settings)
+    tables["comparisons"] = _comparisons(known, settings)
+    tables["totals"] = totals_table(alones, procedures, fit, standardised, tables["adjusted"],
+                                    list(settings.columns.groups), dict(settings.windows),
+                                    FinancialYear(settings.year.first_month))
+    coverage = achieved_coverage(tables["reliability"], options.levels)
+    portfolio = {**fit.to_dict(), "frequency": history.frequency.value, "coverage": coverage}
+    return Computed({name: tables[name] for name in TABLES}, portfolio)
+
+
+def forecast_options(settings: Settings) -> ForecastOptions:
+    """The part of the settings that the passes need."""
+    forecast = settings.forecast
+    return ForecastOptions(horizon=forecast.horizon, levels=tuple(forecast.levels), style=forecast.style,
+                           methods=tuple(forecast.methods), constants=dict(forecast.constants) or None,
+                           nonnegative=forecast.nonnegative)
+
+
+def data_fingerprint(history: History, closing: pd.Period, settings: Settings) -> str:
+    """SHA-256 of everything the figures rest on beside the settings: actuals, adjustments, comparisons."""
+    known = history.up_to(closing)
+    digest = hashlib.sha256()
+    for table in (known.actuals, known.series.reset_index(), known.faults):
+        digest.update(table.astype(str).to_csv(index=False).encode())
+    for path in (settings.adjustments.file, settings.comparisons.budget, settings.comparisons.earlier):
+        if path is not None:
+            digest.update(Path(path).read_bytes() if Path(path).exists() else b"absent")
+    return digest.hexdigest()
+
+
+def made_with(history: History) -> dict[str, Any]:
+    """What the page tells about how it was made, beside fingerprints."""
+    return {"versions": versions(), "source": history.understood.lines()}
+
+
+def achieved_coverage(reliability: pd.DataFrame, levels: tuple[int, ...]) -> dict[str, Any]:
+    """Share of past actuals inside the ranges that the procedure gave, by level, lead and origin."""
+    found: dict[str, Any] = {}
+    for level in levels:
+        judged = reliability[reliability[f"lower_{level}"].notna()]
+        inside = (judged["actual"] >= judged[f"lower_{level}"]) & (judged["actual"] <= judged[f"upper_{level}"])
+        found[str(level)] = {
+            "all": float(inside.mean()), "n": len(judged),
+            "lead": {int(k): float(v) for k, v in inside.groupby(judged["lead"]).mean().items()},  # type: ignore[call-overload]
+            "origin": {str(k): float(v) for k, v in inside.groupby(judged["origin"]).mean().items()}}
+    return found
+
+
+def _pass_one(known: History, closing: pd.Period, options: ForecastOptions,
+              progress: Progress) -> tuple[list[Alone], list[dict[str, pd.DataFrame]], list[dict[str, str]]]:
+    alones, parts, failures = [], [], []
+    for done, name in enumerate(known.names):
+        series = known[name]
+        try:
+            alones.append(examine(series, closing, options))
+        except Exception as error:  # one series' fault must not stop the round
+            reason = not_forecastable(series, closing)
+            status = "not forecast" if reason or isinstance(error, ForedeckError) else "failed"
+            if not reason:
+                reason = error.data.get("reason", error.what) if isinstance(error, ForedeckError) \
+                    else f"{type(error).__name__}: {error}"
+            failures.append({"series": name, "reason": reason, "status": status})
+            parts.append(_unforecast(known, name, closing, status, reason))
+        progress("series", done + 1, len(known))
+    return alones, parts, failures
+
+
+def _unforecast(known: History, name: str, closing: pd.Period, status: str, reason: str) -> dict[str, pd.DataFrame]:
+    """What can still be shown of a series that has no forecast."""
+    series = known[name]
+    names = [period_name(p) for p in series.periods]
+    row = {"series": name, **dict(series.groups), "unit": series.unit, "unit_value": series.unit_value,
+           "status": status, "reason": reason, "first_period": names[0], "last_period": names[-1],
+           "n_periods": int(pd.notna(series.values).sum())}
+    findings = find(series, closing) if status == "not forecast" else find(series, closing).iloc[:0]
+    findings = findings.assign(period=[period_name(p) if isinstance(p, pd.Period) else "" for p in findings["period"]])
+    return {"series": pd.DataFrame([row]), "findings": findings,
+            "actuals": pd.DataFrame({"series": name, "period": names, "raw": series.values, "used": series.values,
+                                     "repaired": False})}
+
+
+def _joined(parts: list[dict[str, pd.DataFrame]], name: str, order: list[str]) -> pd.DataFrame:
+    tables = [part[name] for part in parts if name in part]
+    filled = [table for table in tables if len(table)] or tables[:1]
+    whole = pd.concat(filled, ignore_index=True)
+    rank = {series: at for at, series in enumerate(order)}
+    return whole.sort_values("series", key=lambda s: s.map(rank), kind="stable", ignore_index=True)
+
+
+def _adjusted(tables: Mapping[str, pd.DataFrame], settings: Settings) -> tuple[pd.DataFrame, pd.DataFrame]:
+    if settings.adjustments.file is None:
+        return empty_table("adjustments"), unadjusted(tables["forecasts"])
+    rows = read_adjustments(settings.adjustments.file)
+    adjustments, adjusted = apply_adjustments(tables["forecasts"], tables["series"], rows)
+    return adjustments, adjusted
+
+
+def _comparisons(known: History, settings: Settings) -> pd.DataFrame:
+    if settings.comparisons.budget is None:
+        return empty_table("comparisons")
+    return read_comparison(settings.comparisons.budget, "budget")
