@@ -84,9 +84,9 @@ class SeriesHistory:
     def _repr_html_(self) -> str:
         known = int(np.isfinite(self.values).sum())
         ends = [period_name(p) for p in (*self.periods[:1], *self.periods[-1:])]
-        return _card(self.name, [f"{' to '.join(ends) or 'no period'}, {self.frequency.value}, in {self.unit}",
-                                 f"{known} of {len(self)} {self.frequency.plural} with a value",
-                                 *_fault_lines(self.faults)])
+        lines = [f"{' to '.join(ends) or 'no period'}, {self.frequency.value}, in {self.unit}",
+                 f"{known} of {len(self)} {self.frequency.plural} with a value"]
+        return _card(self.name, [*lines, *_fault_lines(self.faults)])
 
 
 @dataclass(frozen=True)
