@@ -84,7 +84,8 @@ class SeriesRules(Section):
     """[series]: what holds for every series."""
 
     unit: Text = Field(default="units", description="what the values count, as text")
-    frequency: Frequency | None = Field(default=None, description='"yearly", "quarterly", "monthly" or "weekly"')
+    frequency: Frequency | None = Field(
+        default=None, description='"yearly", "quarterly", "monthly" or "weekly"')
     gaps: Literal["missing", "zero"] = Field(
         default="missing", description='"missing" (not known) or "zero"')
 
@@ -238,13 +239,18 @@ def load_settings(path: str | Path, *, methods: Collection[str] | None = None) -
         leads = min(3, settings.forecast.horizon)
         settings = settings.model_copy(update={"windows": {f"next {leads}": leads}})
     canonical = json.dumps(settings.model_dump(mode="json"), sort_keys=True)
+    settings = _with_whole_paths(settings, path.parent)
+    settings._path, settings._text = path, text
+    settings._fingerprint = hashlib.sha256(canonical.encode()).hexdigest()
+    return settings
+
+
+def _with_whole_paths(settings: Settings, folder: Path) -> Settings:
     for section, key in _PATHS:
         part = getattr(settings, section)
         if getattr(part, key) is not None:
-            place = {key: path.parent / getattr(part, key)}
+            place = {key: folder / getattr(part, key)}
             settings = settings.model_copy(update={section: part.model_copy(update=place)})
-    settings._path, settings._text = path, text
-    settings._fingerprint = hashlib.sha256(canonical.encode()).hexdigest()
     return settings
 
 
