@@ -1,0 +1,59 @@
+"""Ranges of totals, against the variance of a sum (closed form)."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from scipy import stats
+
+from foredeck.portfolio.joint_totals import total_range, window_errors
+
+SERIES, ORIGINS = 30, 400
+
+
+def total_sd(standardised: np.ndarray, scale: np.ndarray, leads: int = 1) -> float:
+    errors = window_errors(standardised, scale, np.arange(leads), (80,), np.ones((1, 2, standardised.shape[2])))
+    half = total_range(errors, np.arange(len(scale))).mean()
+    return float(half / stats.norm.ppf(0.9))
+
+
+def shared(common: float, seed: int) -> np.ndarray:
+    rng = np.random.default_rng(seed)
+    own, together = rng.normal(size=(SERIES, ORIGINS, 1)), rng.normal(size=(1, ORIGINS, 1))
+    return np.sqrt(1 - common) * own + np.sqrt(common) * together
+
+
+def test_independent_series_add_in_variance() -> None:
+    scale = np.full((SERIES, 1), 2.0)
+    assert total_sd(shared(0.0, 1), scale) == pytest.approx(2.0 * np.sqrt(SERIES), rel=0.08)
+
+
+def test_series_that_move_as_one_add_in_spread() -> None:
+    scale = np.full((SERIES, 1), 2.0)
+    assert total_sd(shared(1.0, 2), scale) == pytest.approx(2.0 * SERIES, rel=0.05)
+
+
+def test_a_common_shock_gives_the_variance_of_equally_correlated_terms() -> None:
+    # Var(sum) = n (1 - r) + n^2 r for unit variances
+    expected = np.sqrt(SERIES * 0.7 + SERIES**2 * 0.3)
+    assert total_sd(shared(0.3, 3), np.ones((SERIES, 1))) == pytest.approx(expected, rel=0.08)
+
+
+def test_leads_that_repeat_the_same_error_add_in_spread() -> None:
+    once = np.random.default_rng(4).normal(size=(SERIES, ORIGINS, 1))
+    assert total_sd(np.repeat(once, 4, axis=2), np.ones((SERIES, 4)), leads=4) == pytest.approx(
+        4 * np.sqrt(SERIES), rel=0.08)
+
+
+def test_a_series_without_past_errors_enters_by_the_common_correlation() -> None:
+    errors = shared(0.3, 5)
+    errors[-1] = np.nan
+    expected = np.sqrt(SERIES * 0.7 + SERIES**2 * 0.3)
+    assert total_sd(errors, np.ones((SERIES, 1))) == pytest.approx(expected, rel=0.08)
+
+
+def test_without_any_known_window_the_leads_are_taken_as_moving_together() -> None:
+    nothing = np.full((2, 5, 3), np.nan)
+    errors = window_errors(nothing, np.ones((2, 3)), np.arange(3), (80,), np.full((1, 2, 3), 1.5))
+    assert errors.spread == pytest.approx([3.0, 3.0])
+    assert total_range(errors, np.array([0])) == pytest.approx(np.full((1, 2), 4.5))

@@ -1,0 +1,198 @@
+"""The pack of a round: reports from notebooks, cover, workbook, data files, manifest.
+
+Everything is made in a folder beside the pack, whose name tells round and revision; when
+it is complete the two are exchanged, so readers find the old pack or the new one, never half
+of either. What a killed run finished there is used again.
+"""
+
+from __future__ import annotations
+
+import json
+import os
+import shutil
+from concurrent.futures import ProcessPoolExecutor, as_completed
+from dataclasses import dataclass, replace
+from multiprocessing import get_context
+from pathlib import Path
+
+from foredeck.assets import notebook_path
+from foredeck.errors import ForedeckError, SettingsError
+from foredeck.ledger.round_record import RoundRecord
+from foredeck.ledger.store import Ledger
+from foredeck.pack.data_files import write_forecasts
+from foredeck.pack.file_names import file_names
+from foredeck.pack.manifest import pack_files, verify, write_manifest
+from foredeck.pack.workbook import write_workbook
+from foredeck.reports.execute import run_notebook
+from foredeck.reports.export import export_html
+from foredeck.review.watch import watch_list
+from foredeck.rounds.compute import Progress
+from foredeck.settings import Settings
+
+COVER = "cover.html"
+TRIES = 2
+"""A report that fails is tried once more: kernels die now and then without the report's fault."""
+
+
+@dataclass(frozen=True)
+class Published:
+    """Where the cover is, and which reports could not be made, with reasons."""
+
+    cover: Path
+    failed: dict[str, str]
+
+
+def publish(ledger: Ledger, record: RoundRecord, settings: Settings, progress: Progress,
+            again: bool = False) -> Published:
+    """Make the pack of an issued or agreed round.
+
+    Parameters
+    ----------
+    again : bool
+        True makes it anew even when a whole pack of this revision is in place.
+    """
+    place = settings.pack.folder / record.name
+    staging = settings.pack.folder / f".{record.name}-{record.revision}"
+    _repair_exchange(place)
+    if not again and _is_whole(place, record):
+        return Published(place / COVER, {})
+    if again:
+        shutil.rmtree(staging, ignore_errors=True)
+    for stale in settings.pack.folder.glob(f".{record.name}-*"):
+        if stale != staging:
+            shutil.rmtree(stale)
+    staging.mkdir(parents=True, exist_ok=True)
+    wanted = _reports_wanted(record, settings)
+    links = {name: f"reports/{file}" for name, file in file_names(wanted, ".html").items()}
+    failed = _make_reports(ledger, record, links, staging, settings, progress)
+    for name in failed:
+        del links[name]
+    _finish(ledger, record, links, failed, staging, settings)
+    _exchange(staging, place)
+    ledger.register_pack(record.name, pack_files(place))
+    return Published(place / COVER, failed)
+
+
+def _reports_wanted(record: RoundRecord, settings: Settings) -> list[str]:
+    asked, known = settings.pack.reports, record.series_names
+    if "html" not in settings.pack.formats or asked == "none":
+        return []
+    if asked == "all":
+        return known
+    for name in asked:
+        if name not in known:
+            raise SettingsError(f"a report is asked for {name!r}, which the round does not have",
+                                where="[pack] reports", allowed='"all", "none" or names of series of the round',
+                                do="correct the name")
+    return list(asked)
+
+
+def _make_reports(ledger: Ledger, record: RoundRecord, links: dict[str, str], staging: Path, settings: Settings,
+                  progress: Progress) -> dict[str, str]:
+    """Run the report notebook of each series; return the reasons of those that failed."""
+    missing = {name: staging / link for name, link in links.items() if not (staging / link).exists()}
+    (staging / "reports").mkdir(exist_ok=True)
+    failed: dict[str, str] = {}
+    done = len(links) - len(missing)
+    if links:
+        progress("reports", done, len(links))
+    if not missing:
+        return failed
+    # spawned, not forked: a fork of a process with threads (arrow, numba) may hang
+    with ProcessPoolExecutor(min(settings.pack.workers, len(missing)), mp_context=get_context("spawn")) as pool:
+        tasks = {pool.submit(make_report, str(ledger.folder), record.name, name, path): name
+                 for name, path in missing.items()}
+        for task in as_completed(tasks):
+            reason = task.result()
+            if reason:
+                failed[tasks[task]] = reason
+            done += 1
+            progress("reports", done, len(links))
+    return {name: failed[name] for name in links if name in failed}
+
+
+def make_report(ledger: str, round: str, series: str, path: Path) -> str:
+    """Run one series report and write its page; the page appears whole or not at all.
+
+    Returns
+    -------
+    str
+        Why it failed; empty when it did not.
+    """
+    parameters = {"ledger": ledger, "round": round, "series": series, "pack": True}
+    return _try(notebook_path("series_report"), parameters, path, "foredeck-report")
+
+
+def _try(notebook: Path, parameters: dict[str, object], path: Path, template: str) -> str:
+    working, page = path.with_suffix(".ipynb"), path.with_suffix(".html.part")
+    reason = ""
+    for _ in range(TRIES):
+        try:
+            run_notebook(notebook, working, parameters)
+            export_html(working, page, template, plotly_js="beside")
+            os.replace(page, path)
+            reason = ""
+            break
+        except ForedeckError as error:
+            reason = error.what
+        finally:
+            working.unlink(missing_ok=True)
+            page.unlink(missing_ok=True)
+    return reason
+
+
+def _finish(ledger: Ledger, record: RoundRecord, links: dict[str, str], failed: dict[str, str], staging: Path,
+            settings: Settings) -> None:
+    """All of the pack that is made from the whole round."""
+    view = replace(record.view(), links=links)
+    formats = settings.pack.formats
+    _copy_plotly(staging, staging / "reports" if links else None)
+    parameters: dict[str, object] = {"ledger": str(ledger.folder), "round": record.name, "links": json.dumps(links),
+                                     "failed": json.dumps(failed)}
+    reason = _try(notebook_path("pack_cover"), parameters, staging / COVER, "foredeck-cover")
+    if reason:
+        raise ForedeckError(f"the cover could not be made: {reason}", where=str(staging),
+                            do=f"foredeck render {record.name}, after mending what it says")
+    if "workbook" in formats:
+        write_workbook(staging / "forecasts.xlsx", view, watch=watch_list(view.tables, view.previous))
+    write_forecasts(staging, view, [f for f in formats if f in ("parquet", "csv")])
+    write_manifest(staging, view, revision=record.revision)
+
+
+def _copy_plotly(*folders: Path | None) -> None:
+    """One copy of plotly.js beside each folder of pages: pages never ask the network."""
+    import plotly
+
+    script = Path(plotly.__file__).parent / "package_data" / "plotly.min.js"
+    for folder in folders:
+        if folder is not None:
+            shutil.copyfile(script, folder / "plotly.min.js")
+
+
+def _is_whole(place: Path, record: RoundRecord) -> bool:
+    try:
+        manifest = json.loads((place / "manifest.json").read_text(encoding="utf-8"))
+        return bool(manifest["revision"] == record.revision and manifest["state"] == record.state
+                    and not verify(place))
+    except (OSError, ValueError, KeyError, ForedeckError):
+        return False
+
+
+def _exchange(staging: Path, place: Path) -> None:
+    old = _old(place)
+    shutil.rmtree(old, ignore_errors=True)
+    if place.exists():
+        os.replace(place, old)
+    os.replace(staging, place)
+    shutil.rmtree(old, ignore_errors=True)
+
+
+def _repair_exchange(place: Path) -> None:
+    """A run killed between the two moves of an exchange left no pack: put the old one back."""
+    old = _old(place)
+    if old.exists() and not place.exists():
+        os.replace(old, place)
+
+
+def _old(place: Path) -> Path:
+    return place.with_name(f".{place.name}-old")
