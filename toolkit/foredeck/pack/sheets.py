@@ -10,6 +10,7 @@ from dataclasses import dataclass
 
 import pandas as pd
 
+from foredeck.reports.cover_facts import silent_series
 from foredeck.study import RoundView
 
 
@@ -136,7 +137,8 @@ def sheets(view: RoundView, watch: pd.DataFrame, cautions: Sequence[str]) -> lis
             columns=_heads("rank", "series", "value_at_stake", "reasons", "ask")), keys=2),
         Sheet("Reliability", reliability.rename(columns={**_RELIABILITY_HEADS, **inside}), keys=2,
               shares=tuple(inside.values())),
-        Sheet("Not forecast", _not_forecast(series, tables["failures"])),
+        Sheet("Not forecast", silent_series(view).rename(columns={
+            "series": "Series", "status": "What happened", "reason": "Reason"})),
         Sheet("About", _about(view, cautions)),
     ]
 
@@ -158,13 +160,6 @@ def _findings(findings: pd.DataFrame) -> pd.DataFrame:
              "used": "Value used"}
     table = findings[columns].rename(columns=heads)
     return table.assign(Finding=table["Finding"].str.replace("_", " "))
-
-
-def _not_forecast(series: pd.DataFrame, failures: pd.DataFrame) -> pd.DataFrame:
-    left = series.loc[series["status"] != "forecast", ["series", "status", "reason"]]
-    failed = failures[["series", "reason"]].assign(status="report failed")
-    table = pd.concat([left, failed[left.columns]], ignore_index=True)
-    return table.rename(columns={"series": "Series", "status": "What happened", "reason": "Reason"})
 
 
 def _about(view: RoundView, cautions: Sequence[str]) -> pd.DataFrame:
