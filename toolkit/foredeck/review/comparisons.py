@@ -1,0 +1,153 @@
+"""Figures to hold a forecast against: a budget or target from a file, last year, the year to date."""
+
+from __future__ import annotations
+
+import csv
+import math
+from collections.abc import Iterator, Sequence
+from pathlib import Path
+
+import pandas as pd
+
+from foredeck.errors import IntakeError, PeriodError
+from foredeck.periods import FinancialYear, parse_period, period_name
+from foredeck.review.period_texts import frequency_of_text, shifted_all
+
+_COLUMNS = ["name", "series", "period", "value"]
+
+
+def read_comparison(path: str | Path, name: str, *, series: str | Sequence[str] = "series",
+                    period: str = "period", value: str = "value") -> pd.DataFrame:
+    """Read named figures, such as a budget, from a CSV file.
+
+    Parameters
+    ----------
+    path : str or Path
+        UTF-8, with a heading row. Columns that are not asked for are left alone.
+    name : str
+        What the figures are called on pages: "budget".
+    series : str or list of str
+        The column that names the series, or several whose texts are joined by "/".
+    period, value : str
+        Their columns; periods as text such as 2026-10, values as plain numbers.
+
+    Returns
+    -------
+    DataFrame[name, series, period, value]
+        sorted by series and period.
+
+    Raises
+    ------
+    IntakeError
+        naming the line: a column that is lacking, a value that is no number, a period that
+        is none or of another frequency, a figure given twice.
+    """
+    place = Path(path)
+    keys = [series] if isinstance(series, str) else list(series)
+    rows: dict[tuple[str, str], tuple[float, str]] = {}
+    frequency = None
+    for where, row in _lines(place, [*keys, period, value]):
+        named, at = "/".join(row[key] for key in keys), row[period]
+        try:
+            found = frequency_of_text(at)
+        except PeriodError as fault:
+            raise IntakeError(fault.what, where=where, allowed=fault.allowed, do=fault.do) from fault
+        frequency = frequency or found
+        if found is not frequency:
+            raise IntakeError(f"the period {at!r} is {found.value}, those before are {frequency.value}",
+                              where=where, allowed="one frequency in a file", do="correct the period")
+        if (named, at) in rows:
+            raise IntakeError(f"{named!r} has a second figure for {at}; the first is in {rows[named, at][1]}",
+                              where=where, allowed="one figure a series and period",
+                              do="remove one of the two")
+        rows[named, at] = _number(row[value], where), where
+    figures = [(name, named, at, figure) for (named, at), (figure, _) in rows.items()]
+    frame = pd.DataFrame(figures, columns=_COLUMNS)
+    frame = frame.astype({"name": "str", "series": "str", "period": "str", "value": "float64"})
+    return frame.sort_values(["series", "period"], ignore_index=True)
+
+
+def _lines(place: Path, needed: Sequence[str]) -> Iterator[tuple[str, dict[str, str]]]:
+    try:
+        with place.open(encoding="utf-8-sig", newline="") as handle:
+            reader = csv.DictReader(handle)
+            heading = list(reader.fieldnames or [])
+            for column in needed:
+                if column not in heading:
+                    raise IntakeError(f"{place.name} has no column {column!r}", where=f"{place.name} line 1",
+                                      allowed=", ".join(heading) or "a heading row",
+                                      do="correct the column's name")
+            for row in reader:
+                fields = {key: (row[key] or "").strip() for key in needed}
+                yield f"{place.name} line {reader.line_num}", fields
+    except FileNotFoundError as fault:
+        raise IntakeError(f"there is no file {place.name}", where=str(place), allowed="a CSV file",
+                          do="correct the path, or leave the setting out") from fault
+    except UnicodeDecodeError as fault:
+        raise IntakeError(f"{place.name} is not UTF-8 text", where=f"{place}, byte {fault.start}",
+                          allowed="CSV in UTF-8", do="save the file as CSV in UTF-8") from fault
+
+
+def _number(text: str, where: str) -> float:
+    try:
+        figure = float(text)
+    except ValueError:
+        figure = math.nan
+    if not math.isfinite(figure):
+        raise IntakeError(f"{text!r} is no number", where=where,
+                          allowed="a plain number such as 1250 or 17.5",
+                          do="correct the value, or remove the row")
+    return figure
+
+
+def last_year(actuals: pd.DataFrame, forecasts: pd.DataFrame) -> pd.DataFrame:
+    """The actual of the same period a year before each forecast period.
+
+    Parameters
+    ----------
+    actuals : DataFrame[series, period, raw]
+    forecasts : DataFrame[series, period, ...]
+
+    Returns
+    -------
+    DataFrame[name, series, period, value]
+        name is "last year"; raw values; one row for each forecast period that has such an
+        actual. A year is one season: 52 periods of weekly series.
+    """
+    cells = forecasts[["series", "period"]].drop_duplicates()
+    if cells.empty:
+        return pd.DataFrame(columns=_COLUMNS).astype({**dict.fromkeys(_COLUMNS, "str"), "value": "float64"})
+    season = frequency_of_text(str(cells["period"].iloc[0])).season_length
+    before = cells.assign(year_before=cells["period"].map(shifted_all(cells["period"], -season)))
+    known = actuals[["series", "period", "raw"]].rename(columns={"period": "year_before", "raw": "value"})
+    found = before.merge(known, on=["series", "year_before"], how="inner").dropna(subset="value")
+    return found.assign(name="last year")[_COLUMNS].reset_index(drop=True)
+
+
+def year_to_date(actuals: pd.DataFrame, closing: str, first_month: int = 1) -> pd.DataFrame:
+    """Actuals of the financial year so far.
+
+    Parameters
+    ----------
+    actuals : DataFrame[series, period, raw]
+    closing : str
+        The last closed period.
+    first_month : int
+        With which month the financial year begins.
+
+    Returns
+    -------
+    DataFrame[series, first, last, actual_to_date, n_periods, n_missing]
+        The sum of raw values from the year's first period to the closing; `n_missing`
+        counts periods without a value, which add nothing.
+    """
+    period = parse_period(closing, frequency_of_text(closing))
+    first = FinancialYear(first_month).containing(period)[0]
+    spanned = [period_name(first + step) for step in range((period - first).n + 1)]
+    inside = actuals[actuals["period"].isin(spanned)]
+    sums = inside.groupby("series", sort=False)["raw"].agg(["sum", "count"])
+    names = pd.Series(actuals["series"].unique(), dtype="str")
+    return pd.DataFrame({
+        "series": names, "first": spanned[0], "last": closing,
+        "actual_to_date": names.map(sums["sum"]).fillna(0.0).astype("float64"), "n_periods": len(spanned),
+        "n_missing": len(spanned) - names.map(sums["count"]).fillna(0).astype("int64")})
