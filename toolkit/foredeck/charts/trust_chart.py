@@ -1,0 +1,96 @@
+"""How far forecasts have missed, by how far ahead they looked."""
+
+from __future__ import annotations
+
+import pandas as pd
+
+from foredeck.charts.figure import Figure, note, scatter
+from foredeck.charts.labels import benchmark_label, label
+from foredeck.charts.scale import decimals_for, number, pushed_apart, value_axis
+from foredeck.charts.source import StudyLike
+from foredeck.charts.theme import role
+from foredeck.periods import Frequency
+
+LEAST = 3
+"""Fewest tried forecasts from which a miss is averaged."""
+
+
+def misses_by_lead(reliability: pd.DataFrame, least: int = LEAST) -> pd.DataFrame:
+    """Average the misses of the procedure backtest by lead, over all tried origins.
+
+    Returns
+    -------
+    DataFrame of lead, n, miss, benchmark
+        mean absolute errors in the series' unit. Leads with fewer than `least` cells are
+        left out; the benchmark is NaN unless every cell of the lead has one.
+    """
+    rows = reliability[reliability["actual"].notna()]
+    errors = pd.DataFrame({
+        "lead": rows["lead"], "miss": (rows["actual"] - rows["forecast"]).abs(),
+        "benchmark": (rows["actual"] - rows["benchmark"]).abs()})
+    by_lead = errors.groupby("lead")
+    n = by_lead["miss"].size()
+    whole = by_lead["benchmark"].count() == n
+    done = pd.DataFrame({"n": n, "miss": by_lead["miss"].mean(), "benchmark": by_lead["benchmark"].mean().where(whole)})
+    return done[done["n"] >= least].reset_index()
+
+
+def trust(study: StudyLike, id: str = "trust") -> Figure:
+    """Draw the misses of a study's procedure backtest: see `trust_figure`."""
+    return trust_figure(misses_by_lead(study.reliability), frequency=study.frequency, unit=study.unit, id=id)
+
+
+def trust_figure(misses: pd.DataFrame, *, frequency: str, unit: str, id: str = "trust") -> Figure:
+    """Draw typical misses by lead beside the benchmark's.
+
+    Parameters
+    ----------
+    misses : columns lead, n, miss, benchmark
+        as from `misses_by_lead`; at least one row.
+    """
+    every = Frequency(frequency)
+    lead, other = misses["lead"].tolist(), misses[misses["benchmark"].notna()]
+    axis = value_axis([*misses["miss"], *misses["benchmark"]], room=0.16)
+    decimals = decimals_for(misses["miss"], digits=2)
+    name = benchmark_label(every)
+
+    def hover(what: str, rows: pd.DataFrame, column: str) -> list[str]:
+        return [f"{k} {label('ahead', plural=every.plural)}: {what} {number(v, decimals)}"
+                for k, v in zip(rows["lead"], rows[column], strict=True)]
+
+    data = [scatter(other["lead"], other["benchmark"], role("last_year"), hover(name, other, "benchmark")),
+            scatter(lead, misses["miss"], role("forecast"), hover(label("forecast"), misses, "miss"))]
+    height, top, foot = 300, 14, 50
+    ends = [(float(misses["miss"].iloc[-1]), label("forecast"), "plum", lead[-1])]
+    if len(other):
+        ends.append((float(other["benchmark"].iloc[-1]), name, "ink2", int(other["lead"].iloc[-1])))
+    placed = pushed_apart([e[0] for e in ends], axis, height - top - foot)
+    notes = [note(max(lead), y, text, token, xshift=11, bold=token == "plum")
+             for y, (_, text, token, _) in zip(placed, ends, strict=True)]
+    first_miss, first_other = float(misses["miss"].iloc[0]), float(misses["benchmark"].iloc[0])
+    under = not first_miss > first_other
+    notes.append(note(lead[0], first_miss, f"{number(first_miss, decimals)} {unit}", "plum", xanchor="center",
+                      yanchor="top" if under else "bottom", yshift=-10 if under else 10))
+    if first_other == first_other:
+        notes.append(note(lead[0], first_other, number(first_other, decimals), "ink2", xanchor="center",
+                          yanchor="bottom" if under else "top", yshift=9 if under else -9))
+    margin = {"l": axis.margin, "r": 138, "t": top, "b": foot}
+    step = max(1, -(-len(lead) // 13))
+    title = {"text": label("ahead", plural=every.plural), "standoff": 6}
+    layout = {"height": height, "margin": margin, "annotations": notes, "yaxis": axis.layout(),
+              "xaxis": {"range": [lead[0] - 0.9, lead[-1] + 0.5], "tickvals": lead[::step], "title": title}}
+    narrow = {"margin": {**margin, "l": axis.margin - 4, "r": 124},
+              "xaxis": {"range": [lead[0] - 1.6, lead[-1] + 0.5], "tickvals": lead[::max(1, -(-len(lead) // 5))]}}
+    against = ""
+    if len(other):
+        against = label("trust against", benchmark=name, first=number(float(other["benchmark"].iloc[0]), decimals),
+                        last=number(float(other["benchmark"].iloc[-1]), decimals))
+    alt = label("trust alt", plural=every.plural, unit=unit, first=number(first_miss, decimals), lead_first=lead[0],
+                last=number(float(misses["miss"].iloc[-1]), decimals), lead_last=lead[-1], against=against)
+    table = pd.DataFrame(
+        [[str(r["lead"]), number(r["miss"], decimals), number(r["benchmark"], decimals), str(r["n"])]
+         for r in misses.to_dict("records")],
+        columns=[label("ahead", plural=every.plural).capitalize(), label("forecast").capitalize(), name.capitalize(),
+                 label("tried")])
+    return Figure(id, data, layout, narrow, label("trust lead", unit=unit), label("trust rest", plural=every.plural),
+                  alt, table)
