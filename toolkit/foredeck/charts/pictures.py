@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from html import escape
 
@@ -14,6 +15,7 @@ from foredeck.charts.source import StudyLike, outer_and_inner
 from foredeck.charts.theme import token
 from foredeck.charts.time_axis import TimeAxis
 
+Place = Callable[[float], float]
 _STILL = 'vector-effect="non-scaling-stroke"'
 
 
@@ -97,7 +99,7 @@ def _small_alt(name: str, known: pd.DataFrame, coming: pd.DataFrame, outer: int,
                  range=ranged)
 
 
-def _pieces(at: pd.Series[int], values: pd.Series[float], x, y) -> list[str]:  # type: ignore[no-untyped-def]
+def _pieces(at: pd.Series[int], values: pd.Series[float], x: Place, y: Place) -> list[str]:
     """Cut a line at its gaps; return the points of each piece."""
     pieces: list[list[str]] = [[]]
     for k, v in zip(at, values, strict=True):

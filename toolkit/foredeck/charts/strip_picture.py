@@ -3,21 +3,30 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 from html import escape
 
 from foredeck.charts.labels import label, level_label
 from foredeck.charts.pictures import Picture
-from foredeck.charts.scale import LETTER, ValueAxis, number, value_axis
+from foredeck.charts.scale import LETTER, ValueAxis, decimals_for, number, value_axis
 from foredeck.charts.source import StudyLike, outer_and_inner, previous_of
 from foredeck.charts.theme import token
 from foredeck.charts.time_axis import TimeAxis
 
+Place = Callable[[float], float]
 WIDTHS = {"wide": 1064, "mid": 660, "narrow": 358}
 
 
-def strip(study: StudyLike) -> Picture | None:
-    """Draw the strip of a study's next period; None where it has no forecast or no range."""
+def strip(study: StudyLike, write: Callable[[float], str] | None = None) -> Picture | None:
+    """Draw the strip of a study's next period; None where it has no forecast or no range.
+
+    Parameters
+    ----------
+    write : function of a figure, or None
+        how forecasts are rounded and written; None writes them as the actuals are recorded.
+    """
     if study.adjusted.empty:
         return None
     outer, inner = outer_and_inner(study.levels)
@@ -34,20 +43,20 @@ def strip(study: StudyLike) -> Picture | None:
     inside = (float(row[f"lower_{inner}"]), float(row[f"upper_{inner}"])) if inner is not None else None
     return strip_of(float(row["adjusted"]), (float(row[f"lower_{outer}"]), float(row[f"upper_{outer}"])), inside,
                     when=time.name(time.place(str(row["period"]))), past_name=time.name(at), past=past, said=said,
-                    outer_level=outer, unit=study.unit)
+                    outer_level=outer, unit=study.unit, write=write)
 
 
 def strip_of(value: float, outer: tuple[float, float], inner: tuple[float, float] | None, *, when: str,
              past_name: str, past: float, said: float, outer_level: int, unit: str,
-             step: float = 0.0) -> Picture | None:
+             write: Callable[[float], str] | None = None) -> Picture | None:
     """Draw forecast, ranges, last year and last round of one period, for three page widths.
 
     Parameters
     ----------
     past, said : float
         the same period a year before; what the last round said. NaN leaves them out.
-    step : float
-        figures are rounded to multiples of it; 0 for a hundredth of the range's width.
+    write : function of a figure, or None
+        how forecasts are rounded and written.
 
     Returns
     -------
@@ -56,10 +65,12 @@ def strip_of(value: float, outer: tuple[float, float], inner: tuple[float, float
     """
     if not all(math.isfinite(v) for v in (value, *outer)):
         return None
-    one = _Strip(value, outer, inner, past_name, past, said, outer_level, unit, step or (outer[1] - outer[0]) / 100)
+    decimals = decimals_for([past, *outer] if math.isfinite(past) and past != round(past) else [round(outer[1])])
+    known = partial(number, decimals=decimals)
+    one = _Strip(value, outer, inner, past_name, past, said, outer_level, unit, write or known, known)
     svg = "".join(one.svg(width, name) for name, width in WIDTHS.items())
     before = f"; {label('strip said', value=one.write(said))}" if math.isfinite(said) else ""
-    gone = f"; {past_name}: {one.write(past)}" if math.isfinite(past) else ""
+    gone = f"; {past_name}: {one.known(past)}" if math.isfinite(past) else ""
     ranged = label("strip range", level=level_label(outer_level), lower=one.write(outer[0]), upper=one.write(outer[1]))
     return Picture(svg, label("strip alt", when=when, value=one.write(value), unit=unit, range=ranged, before=before,
                               past=gone))
@@ -77,11 +88,8 @@ class _Strip:
     said: float
     level: int
     unit: str
-    step: float
-
-    def write(self, value: float) -> str:
-        decimals = max(0, -math.floor(math.log10(self.step) + 1e-9)) if self.step > 0 else 0
-        return number(round(value / self.step) * self.step if self.step > 0 else value, decimals)
+    write: Callable[[float], str]
+    known: Callable[[float], str]
 
     def svg(self, width: int, name: str) -> str:
         """Lay the strip out: marks above, the block, the scale below."""
@@ -107,7 +115,7 @@ class _Strip:
         return (f'<svg class="strip {name}" viewBox="0 0 {width} {height - foot + 14}" aria-hidden="true" '
                 f'focusable="false">{"".join(parts)}</svg>')
 
-    def _scale(self, axis: ValueAxis, x, y: float, width: int) -> str:  # type: ignore[no-untyped-def]
+    def _scale(self, axis: ValueAxis, x: Place, y: float, width: int) -> str:
         parts = [f'<line x1="0" x2="{width}" y1="{y}" y2="{y}" stroke="{token("rule")}"/>']
         for k, (tick, text) in enumerate(zip(axis.ticks, axis.texts, strict=True)):
             place = x(tick)
@@ -117,12 +125,12 @@ class _Strip:
             parts.append(_text(place, y + 20, f"{text} {self.unit}" if k == 0 else text, "ink2", anchor=anchor))
         return "".join(parts)
 
-    def _block(self, x, edges: tuple[float, float], fill: str, y: float, tall: float) -> str:  # type: ignore[no-untyped-def]
+    def _block(self, x: Place, edges: tuple[float, float], fill: str, y: float, tall: float) -> str:
         left, right = x(edges[0]), x(edges[1])
         return (f'<rect x="{left:.1f}" y="{y}" width="{max(right - left, 1):.1f}" height="{tall}" '
                 f'fill="{token(fill)}" stroke="{token("plum_edge")}"/>')
 
-    def _inside(self, x, y: float, large: bool) -> list[str]:  # type: ignore[no-untyped-def]
+    def _inside(self, x: Place, y: float, large: bool) -> list[str]:
         """Write the level into the pale ends of the block, where it fits."""
         left, right = x(self.outer[0]), x(self.outer[1])
         edge = x(self.inner[0]) if self.inner else x(self.value) - 12
@@ -136,14 +144,14 @@ class _Strip:
             parts.append(_text(right - 8, y + 4.5, span, anchor="end"))
         return parts
 
-    def _above(self, x, y: float, tall: float, width: int, large: bool) -> list[str]:  # type: ignore[no-untyped-def]
+    def _above(self, x: Place, y: float, tall: float, width: int, large: bool) -> list[str]:
         """Mark last year and last round; their labels take two lines where they would touch."""
         marks = []
         if math.isfinite(self.said):
             text = label("strip said" if large else "strip said short", value=self.write(self.said))
             marks.append((x(self.said), text, "ochre"))
         if math.isfinite(self.past):
-            marks.append((x(self.past), f"{self.past_name}: {self.write(self.past)}", "ink2"))
+            marks.append((x(self.past), f"{self.past_name}: {self.known(self.past)}", "ink2"))
         marks.sort(key=lambda mark: mark[0])
         parts, taken = [], []
         for k, (place, text, token_name) in enumerate(marks):

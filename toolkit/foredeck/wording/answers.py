@@ -61,7 +61,7 @@ def _moved(facts: SeriesFacts) -> str:
 def _against_year(facts: SeriesFacts) -> str:
     if not is_known(facts.last_year):
         return ""
-    size = facts.figures.nice(facts.ahead.value - facts.last_year)
+    size = facts.figures.nice(facts.shown - facts.last_year)
     if size == 0:
         return say("headline same year")
     return say("headline more year" if size > 0 else "headline less year", size=facts.figures.text(abs(size)))
@@ -125,20 +125,20 @@ def _year_big(facts: SeriesFacts, size: float) -> str:
         return say("year same")
     base = facts.last_year
     if base > 0 and not facts.intermittent and 0.005 <= abs(size) / base < 3:
-        return say("year more" if size > 0 else "year less", share=percent(abs(facts.ahead.value - base) / base))
+        return say("year more" if size > 0 else "year less", share=percent(abs(facts.shown - base) / base))
     return say("year up" if size > 0 else "year down", size=facts.figures.text(abs(size)))
 
 
 def _comparison(facts: SeriesFacts, name: str, value: float) -> str:
     name = upper_first(name)
-    gap = facts.figures.nice(facts.ahead.value - value)
+    gap = facts.figures.nice(facts.shown - value)
     text = plain(value, facts.decimals)
     if value <= 0 or facts.intermittent:
         return say("comparison value", name=name, value=text)
     if gap == 0 or abs(gap) / value < 0.005:
         return say("comparison same", name=name, value=text)
     return say("comparison more" if gap > 0 else "comparison less", name=name, value=text,
-               share=percent(abs(facts.ahead.value - value) / value))
+               share=percent(abs(facts.shown - value) / value))
 
 
 def _why(facts: SeriesFacts) -> Answer:

@@ -152,9 +152,17 @@ class SeriesFacts:
         return not self.reason
 
     @property
+    def shown(self) -> float:
+        """The forecast of the next period as it is shown, rounded."""
+        return self.figures.nice(self.ahead.value)
+
+    @property
     def change(self) -> float:
-        """This round's figure of the next period less last round's; NaN without one."""
-        return self.ahead.value - self.previous.value
+        """This round's figure of the next period less last round's, both as shown; NaN without one.
+
+        Differences are taken between shown figures, so that a reader's own subtraction agrees.
+        """
+        return self.shown - self.figures.nice(self.previous.value)
 
     @property
     def figures_of_misses(self) -> Rounding:
