@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cache
 
 import numpy as np
 import pandas as pd
@@ -149,11 +149,15 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
     raw, periods = _to_closing(series, closing)
     methods = options.allowed()
 
+    # every origin needs its repaired values three times: each is made once, from what was known then
+    known_then = cache(lambda n: repaired(raw[:n], m, nonnegative=options.nonnegative))
+    seen = cache(lambda n: pattern(known_then(n), m))
+
     def prepare(known: Array) -> Array:
-        return repaired(known, m, nonnegative=options.nonnegative)
+        values: Array = known_then(len(known))
+        return values
 
     used = prepare(raw)
-    seen = lru_cache(maxsize=None)(lambda n: _pattern_at(raw[:n], m, options.nonnegative))
 
     def eligible(method: str, known: Array) -> bool:
         # the error table must know only what a forecaster knew at that origin
@@ -180,7 +184,7 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
         pattern_words=decompose(used, m).words, differencing_words=difference(used, m).words,
         reasons=reasons, cube=cube, offsets=len(raw) - known, pool=pool,
         members=members, constants=tuple({} if f is None else dict(f.constants) for f in fits),
-        naive_scale=np.array([naive_error(prepare(raw[:k]), m) for k in (*known, len(raw))]),
+        naive_scale=np.array([naive_error(known_then(int(k)), m) for k in (*known, len(raw))]),
         mase_scale=mase_scale(used, m))
 
 
@@ -194,10 +198,6 @@ def naive_error(values: Array, season_length: int) -> float:
     change = np.abs(values[lag:] - values[:-lag])
     floor = 1e-3 * max(float(np.mean(np.abs(values))), 1e-9)
     return max(float(change.mean()) if len(change) else 0.0, floor)
-
-
-def _pattern_at(known: Array, season_length: int, nonnegative: bool) -> Pattern:
-    return pattern(repaired(known, season_length, nonnegative=nonnegative), season_length)
 
 
 def _known_counts(n: int, season_length: int, horizon: int) -> NDArray[np.int64]:

@@ -19,7 +19,8 @@ from foredeck.portfolio.applied import apply_fit
 from foredeck.portfolio.fit import fit_portfolio
 from foredeck.portfolio.procedure import live_through
 from foredeck.portfolio.totals import totals_table
-from foredeck.review.adjustments import apply_adjustments, read_adjustments
+from foredeck.review.adjustment_file import read_adjustments
+from foredeck.review.adjustments import apply_adjustments
 from foredeck.review.comparisons import read_comparison
 from foredeck.settings import Settings
 from foredeck.study import TABLES, empty_table, unadjusted, versions
@@ -72,7 +73,7 @@ def compute_round(history: History, closing: pd.Period, settings: Settings, prog
               ("series", "actuals", "findings", "eligibility", "error_table", "members", "forecasts", "reliability")}
     tables["failures"] = pd.DataFrame(failures) if failures else empty_table("failures")
     tables["adjustments"], tables["adjusted"] = _adjusted(tables, settings)
-    tables["comparisons"] = _comparisons(known, settings)
+    tables["comparisons"] = _comparisons(settings)
     tables["totals"] = totals_table(alones, procedures, fit, standardised, tables["adjusted"],
                                     list(settings.columns.groups), dict(settings.windows),
                                     FinancialYear(settings.year.first_month))
@@ -164,11 +165,14 @@ def _adjusted(tables: Mapping[str, pd.DataFrame], settings: Settings) -> tuple[p
     if settings.adjustments.file is None:
         return empty_table("adjustments"), unadjusted(tables["forecasts"])
     rows = read_adjustments(settings.adjustments.file)
-    adjustments, adjusted = apply_adjustments(tables["forecasts"], tables["series"], rows)
+    adjustments, adjusted = apply_adjustments(tables["forecasts"], tables["series"], rows,
+                                              nonnegative=settings.forecast.nonnegative)
     return adjustments, adjusted
 
 
-def _comparisons(known: History, settings: Settings) -> pd.DataFrame:
+def _comparisons(settings: Settings) -> pd.DataFrame:
     if settings.comparisons.budget is None:
         return empty_table("comparisons")
-    return read_comparison(settings.comparisons.budget, "budget")
+    columns = settings.columns
+    return read_comparison(settings.comparisons.budget, "budget", series=columns.series, period=columns.period,
+                           value=columns.value)

@@ -154,7 +154,8 @@ def _finish(ledger: Ledger, record: RoundRecord, links: dict[str, str], failed: 
         raise ForedeckError(f"the cover could not be made: {reason}", where=str(staging),
                             do=f"foredeck render {record.name}, after mending what it says")
     if "workbook" in formats:
-        write_workbook(staging / "forecasts.xlsx", view, watch=watch_list(view.tables, view.previous))
+        write_workbook(staging / "forecasts.xlsx", view, watch=watch_list(
+            view.tables, None if view.previous is None else view.previous.adjusted))
     write_forecasts(staging, view, [f for f in formats if f in ("parquet", "csv")])
     write_manifest(staging, view, revision=record.revision)
 
