@@ -1,9 +1,22 @@
-"""What a method needs of a series, and whether the series has it."""
+"""What a series holds, what a method needs of it, and whether the two fit."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from html import escape
 from typing import Literal
+
+import numpy as np
+
+from foredeck.checks.decomposition import decompose, strength_text
+from foredeck.checks.expectation import Array
+from foredeck.checks.intermittence import (
+    DemandClass,
+    average_demand_interval,
+    demand_class,
+    is_intermittent,
+    squared_variation,
+)
 
 
 @dataclass(frozen=True)
@@ -27,3 +40,119 @@ class Requirements:
     min_seasons: float = 0.0
     positive: bool = False
     intermittent: Literal["only", "never", "any"] = "any"
+
+
+@dataclass(frozen=True)
+class Pattern:
+    """What a series holds.
+
+    Attributes
+    ----------
+    trend, season : bool
+        Whether there is more of it than noise alone shows in 19 series of 20.
+    intermittent : bool
+        Whether the average demand interval reaches 1.32.
+    adi : float
+        Average demand interval: known periods / periods with demand.
+    cv2 : float
+        Squared coefficient of variation of the non-zero values.
+    demand_class : {"smooth", "erratic", "intermittent", "lumpy"}
+        Quadrant of Syntetos, Boylan & Croston (2005).
+    trend_strength, season_strength : float
+        0 to 1; NaN where it cannot be told.
+    words : str
+        The same in sentences.
+    """
+
+    trend: bool
+    season: bool
+    intermittent: bool
+    adi: float
+    cv2: float
+    demand_class: DemandClass
+    trend_strength: float
+    season_strength: float
+    words: str
+
+    def _repr_html_(self) -> str:
+        rows = (("Trend strength, 0 to 1", strength_text(self.trend_strength)),
+                ("Season strength, 0 to 1", strength_text(self.season_strength)),
+                ("Periods per period with demand (ADI)", f"{self.adi:.2f}"),
+                ("Squared variation of demand (CV²)", f"{self.cv2:.2f}"),
+                ("Demand", self.demand_class))
+        body = "".join(f"<tr><th scope='row'>{escape(name)}</th><td>{escape(value)}</td></tr>" for name, value in rows)
+        return f"<div><p>{escape(self.words)}</p><table><tbody>{body}</tbody></table></div>"
+
+
+def pattern(values: Array, season_length: int) -> Pattern:
+    """Tell what a series holds: trend, season, intermittence.
+
+    Parameters
+    ----------
+    values : array, shape (n,); the series' unit
+        NaN is a missing period.
+    season_length : int
+        Periods a year (1, 4, 12, 52).
+
+    Returns
+    -------
+    Pattern
+
+    Raises
+    ------
+    ShapeError
+        if the values are not one series.
+
+    References
+    ----------
+    Wang, Smith & Hyndman (2006), Data Mining and Knowledge Discovery 13, 335-364.
+    Syntetos, Boylan & Croston (2005), Journal of the Operational Research Society 56, 495-503;
+    the interval here is periods / non-zero periods.
+    """
+    parts = decompose(values, season_length)
+    adi, cv2 = average_demand_interval(parts.values), squared_variation(parts.values)
+    rare = is_intermittent(parts.values)
+    quadrant = demand_class(adi, cv2)
+    if rare:
+        often = f"in one period of {adi:.1f}" if np.isfinite(adi) else "never yet"
+        varies = "its size varies much" if quadrant == "lumpy" else "its size varies little"
+        words = f"Demand comes {often} on average and {varies} ({quadrant})."
+        # With most periods empty, STL measures when demand happened to come, not a pattern.
+        return Pattern(False, False, True, adi, cv2, quadrant, parts.trend_strength, parts.season_strength, words)
+    return Pattern(parts.has_trend, parts.has_season, False, adi, cv2, quadrant, parts.trend_strength,
+                   parts.season_strength, parts.words)
+
+
+def ineligible_reason(requirements: Requirements, values: Array, season_length: int, pattern: Pattern) -> str:
+    """Say why a method may not be used on a series.
+
+    Parameters
+    ----------
+    requirements : Requirements
+        What the method needs.
+    values : array, shape (n,); the series' unit
+        What the method would be fitted to; NaN periods count as periods.
+    season_length : int
+        Periods a year (1, 4, 12, 52).
+    pattern : Pattern
+        What the series holds.
+
+    Returns
+    -------
+    str
+        "" when it may be used, else a fragment such as "needs 24 periods, has 9".
+    """
+    n = values.size
+    if requirements.min_seasons > 0 and season_length == 1:
+        return "needs a season; yearly values have none"
+    needed = max(requirements.min_periods, int(np.ceil(requirements.min_seasons * season_length)))
+    if n < needed:
+        return f"needs {needed} periods, has {n}"
+    if requirements.intermittent == "never" and pattern.intermittent:
+        return f"is not for intermittent demand; here it comes in one period of {pattern.adi:.1f}"
+    if requirements.intermittent == "only" and not pattern.intermittent:
+        return "is for intermittent demand only; here there is demand in almost every period"
+    if requirements.positive and not bool((values > 0).all()):
+        low = int((~(values > 0)).sum())
+        return f"needs values above zero, {low} of {n} are not"
+    return ""
