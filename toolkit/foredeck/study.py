@@ -15,11 +15,9 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import pandas as pd
 
-from foredeck.errors import SettingsError
+from foredeck.errors import MethodError, SettingsError
 
 if TYPE_CHECKING:
-    from numpy.typing import NDArray
-
     from foredeck.intake.history import SeriesHistory
 
 TABLES = ("series", "actuals", "findings", "eligibility", "error_table", "members", "forecasts",
@@ -144,7 +142,7 @@ USUAL_HORIZON = {12: 12, 4: 8, 52: 13, 1: 3}
 """Periods ahead when none are asked for, by season length (common practice)."""
 
 
-def study(series: SeriesHistory | pd.Series | NDArray[np.float64], horizon: int | None = None, *,
+def study(series: SeriesHistory | pd.Series[Any], horizon: int | None = None, *,
           levels: Iterable[int] = (50, 90), style: str = "blend", methods: Iterable[str] = (),
           constants: Mapping[str, float] | None = None, nonnegative: bool = True,
           portfolio_fit: Mapping[str, Any] | None = None, closing: pd.Period | None = None) -> Study:
@@ -174,9 +172,8 @@ def study(series: SeriesHistory | pd.Series | NDArray[np.float64], horizon: int 
     Raises
     ------
     MethodError
-        if the series cannot be forecast; the reason is named.
+        if the series cannot be forecast, or has no periods; the reason is named.
     """
-    from foredeck.intake.history import SeriesHistory, as_series_history
     from foredeck.periods import FinancialYear, period_name
     from foredeck.portfolio.alone import ForecastOptions, examine
     from foredeck.portfolio.applied import apply_fit
@@ -184,7 +181,7 @@ def study(series: SeriesHistory | pd.Series | NDArray[np.float64], horizon: int 
     from foredeck.portfolio.procedure import live_through
     from foredeck.portfolio.totals import totals_table
 
-    history = series if isinstance(series, SeriesHistory) else as_series_history(series)
+    history = _as_history(series)
     fit = None if portfolio_fit is None else PortfolioFit.from_dict(portfolio_fit)
     if fit is None:
         options = ForecastOptions(horizon or USUAL_HORIZON[history.season_length], tuple(levels), style,
@@ -205,6 +202,21 @@ def study(series: SeriesHistory | pd.Series | NDArray[np.float64], horizon: int 
     stored = {**fit.to_dict(), "frequency": history.frequency.value}
     return Study.from_tables(history.name, tables, round="", state="study", closing=period_name(closing),
                              portfolio=stored, made={"made_at": "", "versions": versions()})
+
+
+def _as_history(series: SeriesHistory | pd.Series[Any]) -> SeriesHistory:
+    from foredeck.intake.history import SeriesHistory
+    from foredeck.periods import frequency_of
+
+    if isinstance(series, SeriesHistory):
+        return series
+    if not isinstance(series, pd.Series) or not isinstance(series.index, pd.PeriodIndex) or series.empty:
+        raise MethodError(f"a study needs to know the periods; this is a {type(series).__name__} without them",
+                          allowed="a series history, or a pandas Series over a PeriodIndex",
+                          do='take one of what fd.read returned, or give the Series an index: pd.period_range(..., freq="M")')
+    index = pd.period_range(series.index.min(), series.index.max(), freq=series.index.freq)
+    values = series.reindex(index).to_numpy(dtype=np.float64)
+    return SeriesHistory(name=str(series.name or "series"), frequency=frequency_of(index), periods=index, values=values)
 
 
 def unadjusted(forecasts: pd.DataFrame) -> pd.DataFrame:
