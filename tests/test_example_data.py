@@ -14,6 +14,14 @@ import pyarrow.parquet as pq
 import pytest
 from openpyxl import load_workbook
 
+import foredeck as fd
+from foredeck.checks.findings import find
+from foredeck.intake.history import History, closing_period
+from foredeck.periods import period_name
+from foredeck.review.adjustments import apply_adjustments, read_adjustments
+from foredeck.review.comparisons import read_comparison
+from foredeck.settings import load_settings
+
 EXAMPLE = Path(__file__).parents[1] / "example_data"
 TEXT_FILES = ("actuals.csv", "budget.csv", "adjustments.csv", "earlier_forecasts.csv", "planted_findings.csv")
 FAMILIES = {"compost", "seeds", "plant_food", "pots", "hand_tools", "watering", "bird_care", "lawn_care"}
@@ -198,3 +206,95 @@ def test_workbook_holds_no_formula_and_keeps_the_text_entry() -> None:
     header, *body = cells(EXAMPLE / "actuals.xlsx")
     pots = next(row for row in body if row[:2] == ("west", "pots"))
     assert pots[header.index("2022-02")] == "see note"
+
+
+# --- read by foredeck --------------------------------------------------------------------------------------
+
+
+COLUMNS = {"series": ["depot", "family"], "groups": ["depot", "family"], "unit": "cases",
+           "unit_value": "unit_value"}
+
+
+@pytest.fixture(scope="module")
+def from_csv() -> History:
+    return fd.read(EXAMPLE / "actuals.csv", period="month", value="cases", **COLUMNS)
+
+
+@pytest.fixture(scope="module")
+def findings(from_csv: History) -> pd.DataFrame:
+    closing = closing_period(from_csv, "share", 0.9)
+    return pd.concat([find(series, closing) for series in from_csv], ignore_index=True)
+
+
+def test_settings_of_the_example_are_valid_and_name_files_that_exist() -> None:
+    settings = load_settings(EXAMPLE / "settings.toml")
+    assert settings.columns.series == ("depot", "family")
+    assert settings.year.first_month == 4
+    assert settings.windows == {"next 3": 3}
+    for path in (settings.source.file, settings.adjustments.file, settings.comparisons.budget,
+                 settings.comparisons.earlier):
+        assert path is not None
+        assert path.is_file()
+
+
+def test_every_key_of_the_settings_file_is_explained_on_its_line() -> None:
+    lines = (EXAMPLE / "settings.toml").read_text(encoding="utf-8").splitlines()
+    assert [line for line in lines if "=" in line and "#" not in line] == []
+
+
+def test_24_series_are_read_with_groups_and_unit_value(from_csv: History) -> None:
+    assert len(from_csv) == 24
+    compost = from_csv["north/compost"]
+    assert (len(compost), compost.unit, compost.unit_value) == (84, "cases", 14.20)
+    assert dict(compost.groups) == {"depot": "north", "family": "compost"}
+    assert len(from_csv[NEWCOMER]) == 9
+
+
+def test_round_of_the_example_closes_with_october_although_one_series_is_late(from_csv: History) -> None:
+    settings = load_settings(EXAMPLE / "settings.toml")
+    assert period_name(closing_period(from_csv, settings.closing.rule, settings.closing.share)) == "2026-10"
+    assert period_name(closing_period(from_csv, "all")) == "2026-08"
+
+
+@pytest.mark.parametrize(("name", "layout"), [("actuals.xlsx", "wide"), ("actuals.parquet", "long")])
+def test_workbook_and_parquet_hold_the_same_actuals_as_the_csv(
+        from_csv: History, name: str, layout: str) -> None:
+    long = {"period": "month", "value": "cases"} if layout == "long" else {}
+    other = fd.read(EXAMPLE / name, layout=layout, **long, **COLUMNS)
+    assert sorted(other.names) == sorted(from_csv.names)
+    pd.testing.assert_frame_equal(other.series.loc[from_csv.names], from_csv.series)
+    for series in from_csv:
+        found = other[series.name].to_series()
+        pd.testing.assert_series_equal(found.reindex(series.periods), series.to_series(), check_freq=False)
+        # Empty cells beyond a series' own span are no values either.
+        assert found.drop(series.periods, errors="ignore").isna().all()
+
+
+def test_every_planted_finding_is_found_and_nothing_else(findings: pd.DataFrame) -> None:
+    planted = {(row["series"], row["first"], row["code"]) for row in rows(EXAMPLE / "planted_findings.csv")}
+    found = set(zip(findings["series"], findings["period"], findings["code"], strict=True))
+    assert planted - found == set()
+    assert found - planted == set()
+    assert len(findings) == len(planted)
+
+
+def test_adjustments_of_the_example_apply_to_any_forecast_from_november_on(from_csv: History) -> None:
+    periods = [period_name(p) for p in pd.period_range("2026-11", periods=12, freq="M")]
+    figures = {"baseline": 200.0, "lower_90": 150.0, "upper_90": 250.0}
+    baseline = pd.DataFrame([{"series": series, "period": period, "lead": lead, **figures}
+                             for series in from_csv.names for lead, period in enumerate(periods, start=1)])
+    table = from_csv.series.rename_axis("series").reset_index()
+    applied, adjusted = apply_adjustments(baseline, table, read_adjustments(EXAMPLE / "adjustments.csv"))
+    assert set(applied["scope"]) == {row["scope"] for row in rows(EXAMPLE / "adjustments.csv")}
+    figure = adjusted.set_index(["series", "period"])["adjusted"]
+    assert figure["north/bird_care", "2026-12"] == pytest.approx(200 * 1.18)
+    assert figure["west/bird_care", "2026-12"] == pytest.approx(380)
+    assert figure["river/pots", "2027-03"] == pytest.approx(200 * 0.88 + 240 / 8)
+    assert figure["west/compost"].eq(200).all()
+
+
+def test_budget_of_the_example_is_read_for_every_series(from_csv: History) -> None:
+    budget = read_comparison(EXAMPLE / "budget.csv", "budget", series=["depot", "family"], period="month",
+                             value="cases")
+    assert set(budget["series"]) == set(from_csv.names)
+    assert len(budget) == 24 * 19
