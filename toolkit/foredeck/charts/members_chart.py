@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import Any
 
 import pandas as pd
@@ -18,14 +19,14 @@ _DASHES = ("6px,3px", "2px,4px", "8px,3px,2px,3px", "3px,3px", "10px,4px", "1px,
 _MARKS = ("square-open", "circle-open", "triangle-up-open", "triangle-down-open", "star-open", "cross-open")
 
 
-def members(study: StudyLike, id: str = "members") -> Figure | None:
+def members(study: StudyLike, names: Mapping[str, str] | None = None, id: str = "members") -> Figure | None:
     """Draw the members of a study's forecast: see `members_figure`."""
     return members_figure(study.members, study.adjusted, closing=study.closing, frequency=study.frequency,
-                          unit=study.unit, id=id)
+                          unit=study.unit, names=names, id=id)
 
 
 def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: str, frequency: str, unit: str,
-                   id: str = "members") -> Figure | None:
+                   names: Mapping[str, str] | None = None, id: str = "members") -> Figure | None:
     """Draw each method that has a weight, and the baseline that they make.
 
     Parameters
@@ -33,6 +34,7 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
     members : columns method, lead, period, forecast, weight
         Only the `MOST` heaviest are drawn; the table holds all that have a weight.
     adjusted : columns period, lead, baseline
+    names : mapping of method to the name that is shown, or None for its plain name
 
     Returns
     -------
@@ -55,7 +57,7 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
     wanted = [(float(ahead["baseline"].iloc[-1]), label("forecast"), "plum")]
     for k, method in enumerate(order[:MOST]):
         rows = used[used["method"] == method].sort_values("at")
-        name = f"{method.replace('_', ' ')} {number(100 * weight[method])}"
+        name = f"{shown(method, names)} {number(100 * weight[method])}"
         form = role("last_year")
         form["line"].update(width=1.25, dash=_DASHES[k])
         form["marker"].update(symbol=_MARKS[k], size=6)
@@ -79,11 +81,17 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
     alt = label("members alt", n=len(order), when=time.name(first), low=number(float(now.min()), decimals),
                 high=number(float(now.max()), decimals), unit=unit)
     return Figure(id, data, layout, narrow, label("members lead", unit=unit), label("members rest"), alt,
-                  _table(used, order, time, decimals))
+                  _table(used, order, time, decimals, names))
 
 
-def _table(used: pd.DataFrame, order: list[str], time: TimeAxis, decimals: int) -> pd.DataFrame:
+def shown(method: str, names: Mapping[str, str] | None) -> str:
+    """Return the name of a method as readers see it."""
+    return (names or {}).get(method, method.replace("_", " "))
+
+
+def _table(used: pd.DataFrame, order: list[str], time: TimeAxis, decimals: int,
+           names: Mapping[str, str] | None) -> pd.DataFrame:
     wide = used.pivot(index="at", columns="method", values="forecast")[order]
     cells = [[time.name(int(str(at))), *[number(v, decimals) for v in row]]
              for at, row in zip(wide.index, wide.to_numpy(), strict=True)]
-    return pd.DataFrame(cells, columns=[label("period"), *[m.replace("_", " ").capitalize() for m in order]])
+    return pd.DataFrame(cells, columns=[label("period"), *[shown(m, names) for m in order]])

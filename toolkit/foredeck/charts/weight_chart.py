@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Mapping
 
 import numpy as np
 import pandas as pd
 
 from foredeck.charts.figure import Figure, note, numbers
 from foredeck.charts.labels import label
+from foredeck.charts.members_chart import shown
 from foredeck.charts.scale import number, value_axis
 from foredeck.charts.source import StudyLike
 from foredeck.charts.theme import colour
@@ -17,14 +19,14 @@ from foredeck.charts.time_axis import TimeAxis
 SHOWN = 18
 
 
-def weights(study: StudyLike, id: str = "weights") -> Figure | None:
+def weights(study: StudyLike, names: Mapping[str, str] | None = None, id: str = "weights") -> Figure | None:
     """Draw the weights of the leading smoothing method of a study; None where there is none with a constant."""
     leading = leading_constant(study.members)
     if leading is None:
         return None
     method, alpha = leading
-    return weights_figure(alpha, len(study.actuals), method=method, closing=study.closing, frequency=study.frequency,
-                          id=id)
+    return weights_figure(alpha, len(study.actuals), method=shown(method, names), closing=study.closing,
+                          frequency=study.frequency, id=id)
 
 
 def leading_constant(members: pd.DataFrame) -> tuple[str, float] | None:
@@ -59,6 +61,8 @@ def weights_figure(alpha: float, n: int, *, method: str, closing: str, frequency
         smoothing constant of the level, 0 < alpha <= 1
     n : int
         periods of history
+    method : str
+        its name as readers see it
     """
     time = TimeAxis.closed_at(closing, frequency)
     parts = 100 * weights_of(alpha, min(n, SHOWN))
@@ -77,11 +81,10 @@ def weights_figure(alpha: float, n: int, *, method: str, closing: str, frequency
     layout = {"height": 230, "margin": margin, "annotations": notes, "yaxis": axis.layout(),
               "xaxis": {"range": [at[-1] - 0.8, 0.6], **time.ticks(at[-1], 0, 480)}}
     narrow = {"margin": {**margin, "r": 8}, "xaxis": time.ticks(at[-1], 0, 300)}
-    name = method.replace("_", " ")
     cells = [[time.name(k), number(w, 1), number(c, 1)]
              for k, w, c in zip(at, parts, np.cumsum(parts), strict=True)]
     table = pd.DataFrame(cells, columns=[label("period"), label("weight"), label("cumulative")])
     alt = label("weight alt", plural=time.frequency.plural, first=number(float(parts[0]), decimals),
                 three=number(three, decimals))
     return Figure(id, data, layout, narrow, label("weight lead", noun=time.frequency.noun),
-                  label("weight rest", method=name), alt, table)
+                  label("weight rest", method=method), alt, table)

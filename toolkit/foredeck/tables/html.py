@@ -46,6 +46,11 @@ class Cell:
         return inner + (f'<span class="mk">{escape(self.mark)}</span>' if self.mark else "")
 
 
+def as_it_is(value: Any) -> str | Cell:
+    """Write a value that is text or a cell already."""
+    return value if isinstance(value, Cell) else str(value)
+
+
 @dataclass(frozen=True)
 class Column:
     """One column of a table.
@@ -65,7 +70,7 @@ class Column:
 
     name: str
     head: str
-    write: Callable[[Any], str | Cell] = str
+    write: Callable[[Any], str | Cell] = as_it_is
     css: str = ""
 
     @property

@@ -29,3 +29,8 @@ def one_or_many(key: str, count: int, **facts: Any) -> str:
 def upper_first(text: str) -> str:
     """Begin a sentence with a capital letter."""
     return text[:1].upper() + text[1:]
+
+
+def method_name(method: str) -> str:
+    """Return what readers see of a method; one that has no text keeps its own name."""
+    return english.TEXTS.get(f"method {method}", method.replace("_", " "))

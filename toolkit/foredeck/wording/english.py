@@ -205,4 +205,17 @@ _GLOSSARY = {
                  "an unusual future.",
 }
 
-TEXTS: dict[str, str] = {**_NAMES, **_HEAD, **_SECTIONS, **_GLOSSARY}
+_METHODS = {
+    "method ses": "Simple smoothing", "method holt": "Holt’s trend", "method damped_holt": "Damped trend",
+    "method holt_winters_additive": "Trend and season, added",
+    "method holt_winters_multiplicative": "Trend and season, multiplied",
+    "method damped_holt_winters_additive": "Damped trend and season, added",
+    "method damped_holt_winters_multiplicative": "Damped trend and season, multiplied",
+    "method differenced_ses": "Smoothed changes", "method seasonally_differenced_ses": "Smoothed yearly changes",
+    "method moving_average": "Moving average", "method drift": "Drift", "method naive": "Same as last period",
+    "method seasonal_naive": "Same as last year", "method mean": "Average of all history",
+    "method croston": "Croston’s method", "method sba": "Croston’s method, corrected",
+    "method tsb": "Demand and its probability",
+}
+
+TEXTS: dict[str, str] = {**_NAMES, **_HEAD, **_SECTIONS, **_GLOSSARY, **_METHODS}

@@ -1,0 +1,88 @@
+"""What a series page says of trust, pattern and method."""
+
+from __future__ import annotations
+
+import math
+
+import pandas as pd
+
+from foredeck.charts.members_chart import members as members_chart
+from foredeck.charts.season_chart import season as season_chart
+from foredeck.charts.trust_chart import LEAST, misses_by_lead, trust_figure
+from foredeck.charts.weight_chart import weights as weights_chart
+from foredeck.reports.fragments import Part, Section, paragraph, say
+from foredeck.reports.page_texts import text
+from foredeck.study import Study
+from foredeck.tables.html import Column, pairs, table
+from foredeck.wording.catalogue import method_name
+from foredeck.wording.catalogue import say as words
+from foredeck.wording.facts import SeriesFacts, facts_of
+from foredeck.wording.numbers import Rounding, percent, plain
+from foredeck.wording.sections import range_record_words, strength_words, trust_words
+
+
+def trust(study: Study) -> Section | None:
+    """Show how far forecasts of this series have missed; None where it is not forecast."""
+    facts = facts_of(study)
+    if not facts.forecast:
+        return None
+    misses = misses_by_lead(study.reliability)
+    parts: list[Part] = [say(trust_words(facts, misses))]
+    if len(misses):
+        parts.append(trust_figure(misses, frequency=study.frequency, unit=study.unit))
+    elif facts.one_ahead.n:
+        parts.append(paragraph(words("trust too few", n=facts.one_ahead.n), "note"))
+    parts.append(paragraph(range_record_words(facts, study.reliability)))
+    origins = study.reliability["origin"].nunique()
+    sub = words("trust sub", origins=origins, plural=facts.frequency.plural) if origins >= LEAST else ""
+    return Section("trust", words("trust title"), sub, parts)
+
+
+def pattern(study: Study) -> Section:
+    """Show what the history holds, and how the forecast uses it."""
+    facts = facts_of(study)
+    parts: list[Part] = [say(str(study.info.get("pattern_words") or words("pattern unknown"))),
+                         pairs(_strengths(study, facts)), season_chart(study) or ""]
+    if facts.forecast:
+        lead = f"{words('method lead')} {study.info.get('method_words') or ''}".strip()
+        parts.append(paragraph(lead))
+        names = {m: method_name(m) for m in study.members["method"].unique()}
+        parts += [members_chart(study, names) or "", weights_chart(study, names) or ""]
+    if len(study.eligibility):
+        parts.append(_methods(study, facts))
+    return Section("pattern", words("pattern title"), words("pattern sub"), parts)
+
+
+def _strengths(study: Study, facts: SeriesFacts) -> list[tuple[str, str]]:
+    items = []
+    for key in ("season", "trend"):
+        value = study.info.get(f"{key}_strength")
+        strength = math.nan if value is None else float(value)
+        told = strength_words(strength)
+        items.append((text(key), f"{told} {words('strength of', value=f'{strength:.2f}')}"
+                      if math.isfinite(strength) else told))
+    if facts.intermittent:
+        adi = float(study.info.get("adi", math.nan))
+        items.append((text("demand"), text("demand words", noun=facts.frequency.noun, adi=plain(adi, 1))))
+    if study.info.get("differencing_words"):
+        items.append((text("differencing"), str(study.info["differencing_words"])))
+    return items
+
+
+def _methods(study: Study, facts: SeriesFacts) -> str:
+    """Write one row a method: its part, its miss one period ahead, or why it is not used."""
+    first = study.members[study.members["lead"] == 1]
+    part = dict(zip(first["method"], first["weight"], strict=True))
+    errors = study.error_table[study.error_table["lead"] == 1]
+    miss = dict(zip(errors["method"], errors["mae"], strict=True))
+    rows = []
+    for row in study.eligibility.to_dict("records"):
+        weight, missed = float(part.get(row["method"], 0.0)), float(miss.get(row["method"], math.nan))
+        reason = "" if weight > 0 else str(row["reason"] or text("not weighted"))
+        rows.append({"method": method_name(str(row["method"])), "part": percent(weight) if weight > 0 else "",
+                     "miss": Rounding.of_two_figures(missed).text(missed), "reason": reason, "weight": -weight})
+    frame = pd.DataFrame(rows).sort_values(["weight", "method"], kind="stable")
+    return table(frame, [Column("method", text("method")), Column("part", text("part"), css="n"),
+                         Column("miss", text("miss"), css="n"), Column("reason", text("why not"), css="txt")],
+                 lead=text("methods lead"),
+                 rest=text("methods rest", noun=facts.frequency.noun, unit=study.unit), stack=True)
