@@ -211,13 +211,13 @@ def test_workbook_holds_no_formula_and_keeps_the_text_entry() -> None:
 # --- read by foredeck --------------------------------------------------------------------------------------
 
 
-COLUMNS = {"series": ["depot", "family"], "groups": ["depot", "family"], "unit": "cases",
-           "unit_value": "unit_value"}
+COLUMNS = {"series": ["depot", "family"], "groups": ["depot", "family"], "period": "month", "value": "cases",
+           "unit": "cases", "unit_value": "unit_value"}
 
 
 @pytest.fixture(scope="module")
 def from_csv() -> History:
-    return fd.read(EXAMPLE / "actuals.csv", period="month", value="cases", **COLUMNS)
+    return fd.read(EXAMPLE / "actuals.csv", **COLUMNS)
 
 
 @pytest.fixture(scope="module")
@@ -256,11 +256,12 @@ def test_round_of_the_example_closes_with_october_although_one_series_is_late(fr
     assert period_name(closing_period(from_csv, "all")) == "2026-08"
 
 
-@pytest.mark.parametrize(("name", "layout"), [("actuals.xlsx", "wide"), ("actuals.parquet", "long")])
+# Of the faults that reading finds, a wide sheet cannot show the duplicate, nor a column of numbers the text.
+@pytest.mark.parametrize(("name", "layout", "faults"), [("actuals.xlsx", "wide", ["not_a_number"]),
+                                                        ("actuals.parquet", "long", ["duplicate"])])
 def test_workbook_and_parquet_hold_the_same_actuals_as_the_csv(
-        from_csv: History, name: str, layout: str) -> None:
-    long = {"period": "month", "value": "cases"} if layout == "long" else {}
-    other = fd.read(EXAMPLE / name, layout=layout, **long, **COLUMNS)
+        from_csv: History, name: str, layout: str, faults: list[str]) -> None:
+    other = fd.read(EXAMPLE / name, layout=layout, **COLUMNS)
     assert sorted(other.names) == sorted(from_csv.names)
     pd.testing.assert_frame_equal(other.series.loc[from_csv.names], from_csv.series)
     for series in from_csv:
@@ -268,6 +269,8 @@ def test_workbook_and_parquet_hold_the_same_actuals_as_the_csv(
         pd.testing.assert_series_equal(found.reindex(series.periods), series.to_series(), check_freq=False)
         # Empty cells beyond a series' own span are no values either.
         assert found.drop(series.periods, errors="ignore").isna().all()
+    assert list(other.faults["code"]) == faults
+    assert sorted(from_csv.faults["code"]) == ["duplicate", "not_a_number"]
 
 
 def test_every_planted_finding_is_found_and_nothing_else(findings: pd.DataFrame) -> None:
