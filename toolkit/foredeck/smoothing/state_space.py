@@ -246,7 +246,12 @@ def _estimate(
 
 _NAMES = ("alpha", "beta", "gamma", "phi")
 _ABSENT = {"alpha": 0.0, "beta": 0.0, "gamma": 0.0, "phi": 1.0}
-_COARSE = {"alpha": (0.1, 0.4, 0.9), "beta": (0.05, 0.3, 0.9), "gamma": (0.05, 0.5), "phi": (0.9,)}
+_COARSE = {
+    "alpha": (0.02, 0.1, 0.2, 0.4, 0.6, 0.9),
+    "beta": (0.02, 0.2, 0.9),
+    "gamma": (0.02, 0.4),
+    "phi": (0.8, 0.98),
+}
 _FINE_ALPHA = (0.02, 0.06, 0.12, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 0.98)  # where alpha is alone
 
 
@@ -267,5 +272,5 @@ def _plan(form: Form, fixed: tuple[tuple[str, float], ...]) -> tuple[Array, int,
         else:
             axes.append((held[name],))
             lower[place] = upper[place] = held[name]
-    blocks = 3 if len(axes[0]) > 1 else 1
+    blocks = 2 if len(axes[0]) > 1 else 1
     return np.array(list(product(*axes)), dtype=np.float64), blocks, lower, upper
