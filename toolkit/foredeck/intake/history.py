@@ -178,6 +178,16 @@ class History:
     def _faults_by_series(self) -> dict[str, pd.DataFrame]:
         return {str(name): rows.reset_index(drop=True) for name, rows in self.faults.groupby("series")}
 
+    @cached_property
+    def _no_faults(self) -> pd.DataFrame:
+        return self.faults.iloc[:0].reset_index(drop=True)
+
+    @cached_property
+    def _about(self) -> dict[str, dict[str, object]]:
+        rows = self.series.to_dict("records")
+        return {name: {str(key): value for key, value in row.items()}
+                for name, row in zip(self.names, rows, strict=True)}
+
     def __len__(self) -> int:
         """Return the number of series."""
         return len(self.series)
@@ -209,12 +219,13 @@ class History:
             )
         start, stop = self._bounds[name]
         periods, values = self._columns
-        about = dict(zip(self.series.columns, self.series.loc[name], strict=True))
+        about = self._about[name]
         return SeriesHistory(
             name=name, frequency=self.frequency, periods=periods[start:stop],
-            values=values[start:stop].copy(), unit=str(about["unit"]), unit_value=float(about["unit_value"]),
+            values=values[start:stop].copy(), unit=str(about["unit"]),
+            unit_value=float(str(about["unit_value"])),
             groups={column: str(about[column]) for column in self.group_columns},
-            faults=self._faults_by_series.get(name, no_faults()),
+            faults=self._faults_by_series.get(name, self._no_faults),
         )
 
     def up_to(self, period: pd.Period) -> History:
