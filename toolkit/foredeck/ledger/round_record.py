@@ -136,5 +136,5 @@ def _plain(info: pd.DataFrame) -> dict[str, Any]:
 
 
 def _nearest(given: str, known: tuple[str, ...] | list[str]) -> str:
-    near = difflib.get_close_matches(given, known, n=3, cutoff=0.5)
+    near = difflib.get_close_matches(given, known, n=2, cutoff=0.7)
     return f"did you mean {' or '.join(repr(name) for name in near)}?" if near else "check the spelling"

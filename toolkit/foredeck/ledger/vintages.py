@@ -88,7 +88,8 @@ def restated_cells(change: pd.DataFrame, known: pd.DataFrame) -> pd.DataFrame:
     """
     joined = change.merge(known, on=_KEY, how="left", suffixes=("", "_before"))
     reached = joined["series"].map(known.groupby("series")["period"].max())
-    late = (joined["status"] == "new") & (joined["period"] < reached).fillna(False)
+    reached = reached.astype("str").fillna("")
+    late = (joined["status"] == "new") & (joined["period"] < reached)
     joined["what"] = joined["status"].where(~late, "late")
     joined = joined[joined["what"] != "new"].rename(columns={"value_before": "before", "value": "after"})
     return joined[[*_KEY, "before", "after", "what"]].reset_index(drop=True)
