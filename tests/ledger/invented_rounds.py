@@ -61,7 +61,8 @@ def invented(round: str = "2026-10", seed: int = 1, names: tuple[str, ...] = NAM
             "scope": ["all", "depot", *["series"] * len(names)], "member": ["all", "north", *names],
             "window": "next 3", "adjusted": chance.uniform(200, 300, 2 + len(names))}),
         "comparisons": _stacked(names, lambda name: {"name": "budget", "period": ahead, "value": 110.0}),
-        "failures": pd.DataFrame({"series": pd.Series([], dtype="str"), "reason": pd.Series([], dtype="str")}),
+        "failures": pd.DataFrame({"series": pd.Series([], dtype="str"),
+                                  "reason": pd.Series([], dtype="str")}),
     }
     stamp = hashlib.sha256(f"{round} {seed} {names}".encode()).hexdigest()
     return {
@@ -88,7 +89,8 @@ def assert_reads_back(ledger: Ledger, given: dict[str, Any], revision: int | Non
     held = ledger.round(given["round"], revision)
     for name, table in given["tables"].items():
         empty = table.empty  # a column without values takes the type its name implies
-        pd.testing.assert_frame_equal(held.table(name), table, check_dtype=not empty, check_index_type=not empty)
+        pd.testing.assert_frame_equal(held.table(name), table, check_dtype=not empty,
+                                      check_index_type=not empty)
     assert held.portfolio == given["portfolio"]
     assert held.made == given["made"]
     assert held.settings_text == given["settings_text"]

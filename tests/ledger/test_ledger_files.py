@@ -18,7 +18,8 @@ def _long_table(n_series: int = 40, n: int = 2000) -> pd.DataFrame:
 
 
 def test_equal_tables_give_equal_bytes_whatever_their_index_and_text_type():
-    table = pd.DataFrame({"series": ["a", "b"], "value": [1.0, np.nan], "repaired": [True, False], "lead": [1, 2]})
+    table = pd.DataFrame({"series": ["a", "b"], "value": [1.0, np.nan], "repaired": [True, False],
+                          "lead": [1, 2]})
     other = table.astype({"series": object}).set_axis([7, 3])
     other.attrs["note"] = "not stored"
     assert files.parquet_bytes(table, "actuals") == files.parquet_bytes(other, "actuals")
@@ -50,7 +51,8 @@ def test_a_column_of_another_kind_is_refused_by_name(column):
 def test_a_file_is_named_by_its_hash_and_nothing_else_is_left_beside_it(tmp_path):
     stored = files.store(_long_table(2, 5), "actuals", tmp_path, "rounds/2026-10/1")
     assert stored.path == f"rounds/2026-10/1/actuals-{stored.sha256[:12]}.parquet"
-    assert [path.name for path in (tmp_path / "rounds/2026-10/1").iterdir()] == [f"actuals-{stored.sha256[:12]}.parquet"]
+    names = [path.name for path in (tmp_path / "rounds/2026-10/1").iterdir()]
+    assert names == [f"actuals-{stored.sha256[:12]}.parquet"]
     assert (tmp_path / stored.path).stat().st_size == stored.bytes
     assert stored.rows == 10
     assert files.fault_of(tmp_path, stored) == ""
@@ -61,9 +63,9 @@ def test_one_series_is_read_without_the_others(tmp_path):
     stored = files.store(table, "actuals", tmp_path, "rounds")
     groups = pq.ParquetFile(tmp_path / stored.path).metadata
     assert groups.num_row_groups == 4
-    # Everything but the last row group is destroyed: a series in that group must still read, any other must not.
-    begins = min(groups.row_group(3).column(at).dictionary_page_offset or groups.row_group(3).column(at).data_page_offset
-                 for at in range(groups.num_columns))
+    # Everything before the last row group is destroyed: a series in that group still reads, no other does.
+    columns = [groups.row_group(3).column(at) for at in range(groups.num_columns)]
+    begins = min(column.dictionary_page_offset or column.data_page_offset for column in columns)
     content = bytearray((tmp_path / stored.path).read_bytes())
     content[4:begins] = bytes(begins - 4)
     (tmp_path / stored.path).write_bytes(content)

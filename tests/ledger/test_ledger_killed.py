@@ -12,9 +12,9 @@ from collections.abc import Callable
 from pathlib import Path
 
 import pytest
-from ledger.invented_rounds import assert_reads_back, invented, periods, record
 
 from foredeck.ledger.store import open_ledger
+from ledger.invented_rounds import assert_reads_back, invented, periods, record
 
 ROUNDS = periods("2039-12", 240)
 STATES = ("draft", "issued", "agreed")
@@ -85,7 +85,7 @@ _STEPS = ("open", "os.rename", "os.mkdir", "os.remove", "sqlite3.connect")
 
 
 def _killed_at(step: int, folder: Path, work: Callable[[], None]) -> bool:
-    """Do the work in a child that kills itself at its step-th call on the folder; False if it got to the end."""
+    """Do the work in a child that kills itself at its step-th call on the folder; False if it ended."""
 
     def counted() -> None:
         left = step
@@ -116,6 +116,7 @@ def test_a_writer_killed_at_each_of_its_steps_leaves_the_ledger_whole(tmp_path, 
     for revision in ledger.rounds().query("round == '2026-10'")["revision"]:
         assert_reads_back(ledger, after, revision)
     there = {path.relative_to(ledger.folder).as_posix() for path in (ledger.folder / "rounds").rglob("*.*")}
-    registered = {stored.path for round, revision in ledger.rounds()[["round", "revision"]].itertuples(index=False)
+    registered = {stored.path for round,
+                  revision in ledger.rounds()[["round", "revision"]].itertuples(index=False)
                   for stored in ledger.round(round, revision).stored.values()}
     assert there == registered  # the last writer swept what the killed ones had left

@@ -7,10 +7,10 @@ import sqlite3
 from contextlib import closing
 
 import pytest
-from ledger.invented_rounds import assert_reads_back, invented, record
 
 from foredeck.errors import RoundStateError
 from foredeck.ledger.store import open_ledger
+from ledger.invented_rounds import assert_reads_back, invented, record
 
 
 @pytest.fixture
@@ -31,7 +31,8 @@ def test_a_round_moves_from_draft_to_issued_to_agreed(ledger):
     record(ledger, "2026-10")
     assert ledger.issue("2026-10").state == "issued"
     held = ledger.agree("2026-10", by="  Asha Verrall ", on=dt.date(2026, 11, 6))
-    assert (held.state, held.agreed_by, held.agreed_at, held.late) == ("agreed", "Asha Verrall", "2026-11-06", False)
+    assert (held.state, held.agreed_by, held.agreed_at, held.late) == ("agreed", "Asha Verrall",
+                                                                         "2026-11-06", False)
     assert open_ledger(ledger.folder).round("2026-10") == held
     assert held.view().made["agreed_by"] == "Asha Verrall"
 
@@ -119,9 +120,9 @@ def test_a_revision_needs_a_reason_and_an_agreed_round(agreed):
 
 
 NEVER = "an agreed round never changes"
-_COPY = "SELECT {id}, '{round}', {revision}, 'draft', frequency, closing, closing_on, first_lead_ends, horizon, " \
-        "levels, portfolio, made, settings_text, made_at, settings_fingerprint, data_fingerprint, previous_id, " \
-        "'{reason}', NULL, NULL, 0, seal FROM rounds WHERE id = 1"
+_COPY = ("SELECT {id}, '{round}', {revision}, 'draft', frequency, closing, closing_on, first_lead_ends, "
+         "horizon, levels, portfolio, made, settings_text, made_at, settings_fingerprint, data_fingerprint, "
+         "previous_id, '{reason}', NULL, NULL, 0, seal FROM rounds WHERE id = 1")
 
 
 @pytest.mark.parametrize(("statement", "said"), [
@@ -153,7 +154,8 @@ def test_the_database_itself_refuses_to_change_an_agreed_round(agreed, statement
      "states move from draft to issued to agreed"),
     ("UPDATE rounds SET portfolio = '{}'", "what a round recorded never changes"),
     ("UPDATE rounds SET state = 'final'", "states move from draft to issued to agreed"),
-    ("INSERT INTO rounds " + _COPY.format(id=9, round="2026-09", revision=1, reason="").replace("'draft'", "'issued'"),
+    ("INSERT INTO rounds "
+     + _COPY.replace("'draft'", "'issued'").format(id=9, round="2026-09", revision=1, reason=""),
      "a round begins as a draft"),
 ])
 def test_the_database_itself_refuses_false_steps_of_a_draft(ledger, statement, said):

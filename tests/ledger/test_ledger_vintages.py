@@ -5,11 +5,11 @@ from __future__ import annotations
 import numpy as np
 import pandas as pd
 import pytest
-from ledger.invented_rounds import invented, record
 
 from foredeck.errors import LedgerError
 from foredeck.ledger.store import open_ledger
 from foredeck.ledger.vintages import known_actuals, laid_together, vintage
+from ledger.invented_rounds import invented, record
 
 
 @pytest.fixture
@@ -40,7 +40,7 @@ def test_a_vintage_holds_only_what_is_new_changed_or_gone(ledger):
     _record(ledger, "2026-08", FIRST)
     _record(ledger, "2026-09", SECOND)
     assert ledger.round("2026-08").stored["vintage"].rows == 5
-    assert ledger.round("2026-09").stored["vintage"].rows == 8  # not the two cells that stayed: a 2026-06, b 2026-08
+    assert ledger.round("2026-09").stored["vintage"].rows == 8  # all but a 2026-06 and b 2026-08
 
 
 def test_as_of_gives_the_actuals_known_at_each_round(ledger):

@@ -10,11 +10,11 @@ from contextlib import closing
 from pathlib import Path
 
 import pytest
-from ledger.invented_rounds import assert_reads_back, record
 
 from foredeck.errors import LedgerError
 from foredeck.ledger import migrations, tables
 from foredeck.ledger.store import open_ledger
+from ledger.invented_rounds import assert_reads_back, record
 
 
 @pytest.fixture
@@ -52,7 +52,8 @@ def test_a_changed_file_is_found(ledger):
     content = bytearray(path.read_bytes())
     content[len(content) // 2] ^= 1
     path.write_bytes(content)
-    assert ledger.check() == [f"round 2026-10 revision 1: {stored.path} is not what was written: its hash differs"]
+    assert ledger.check() == [
+        f"round 2026-10 revision 1: {stored.path} is not what was written: its hash differs"]
 
 
 def _by_hand(ledger, *statements):
@@ -63,7 +64,8 @@ def _by_hand(ledger, *statements):
 
 def test_an_entry_changed_by_hand_is_found_even_when_its_guards_were_taken_off_and_put_back(ledger):
     guard = migrations.guards()["round_content_update"]
-    _by_hand(ledger, "DROP TRIGGER round_content_update", "UPDATE rounds SET portfolio = '{}' WHERE round = '2026-10'",
+    _by_hand(ledger, "DROP TRIGGER round_content_update",
+             "UPDATE rounds SET portfolio = '{}' WHERE round = '2026-10'",
              guard)
     assert ledger.check() == ["round 2026-10 revision 1: its entry was changed by hand"]
 
@@ -92,7 +94,8 @@ def test_a_damaged_database_is_found_and_said(ledger):
     path.write_bytes(content)
     faults = ledger.check()
     assert faults
-    assert all("ledger.sqlite is damaged" in fault or "the ledger's database refused" in fault for fault in faults)
+    assert all(fault.startswith(("ledger.sqlite is damaged: ", "the ledger's database refused: "))
+               for fault in faults)
 
 
 def test_a_truncated_database_is_found_and_said(ledger):
@@ -145,7 +148,8 @@ def test_the_migrations_make_exactly_the_tables_that_the_code_asks_for(ledger):
                      for column in table.columns}
             assert made == asked, name
             keys = {(row[3], row[2], row[4]) for row in raw.execute(f"PRAGMA foreign_key_list({name})")}
-            assert keys == {(key.parent.name, key.column.table.name, key.column.name) for key in table.foreign_keys}
+            assert keys == {(key.parent.name, key.column.table.name,
+                             key.column.name) for key in table.foreign_keys}
 
 
 def _contents(folder: Path) -> dict[str, tuple[int, int, bytes]]:
@@ -208,7 +212,7 @@ def test_writing_to_a_read_only_folder_is_refused_plainly(as_a_reader):
 
 
 def _cut_off_in_the_middle(ledger, to: Path) -> Path:
-    """A copy of the ledger as a killed writer leaves it: pages half written, and SQLite's journal beside them."""
+    """A copy of the ledger as a killed writer leaves it: pages half written, and a journal beside them."""
     shutil.copytree(ledger.folder, to)
     database = to / "ledger.sqlite"
     halfway = to.with_name("halfway")

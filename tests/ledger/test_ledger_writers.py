@@ -10,12 +10,12 @@ import sys
 import threading
 
 import pytest
-from ledger.invented_rounds import assert_reads_back, invented, record
 
 from foredeck.errors import LedgerBusyError, LedgerError
 from foredeck.ledger import locking
 from foredeck.ledger.locking import refuse_share_without_locks
 from foredeck.ledger.store import open_ledger
+from ledger.invented_rounds import assert_reads_back, invented, record
 
 
 @pytest.fixture
@@ -36,7 +36,8 @@ with writer_lock(Path(sys.argv[1]), this_owner("Tom Ridley")):
 @pytest.fixture
 def other_writer(ledger):
     """Another process that holds the writer's lock."""
-    process = subprocess.Popen([sys.executable, "-c", _HOLDING, str(ledger.folder)], stdout=subprocess.PIPE, text=True,
+    process = subprocess.Popen([sys.executable, "-c", _HOLDING, str(ledger.folder)], stdout=subprocess.PIPE,
+                               text=True,
                                env={**os.environ, "PYTHONPATH": os.pathsep.join(sys.path)})
     with process:
         assert process.stdout is not None

@@ -49,7 +49,8 @@ _ROUNDS_FILES_PACKS = (
         BEGIN SELECT RAISE(ABORT, 'an agreed round is superseded only with a reason'); END""",
     """CREATE TRIGGER round_begins_as_draft BEFORE INSERT ON rounds WHEN NEW.state <> 'draft'
         BEGIN SELECT RAISE(ABORT, 'a round begins as a draft'); END""",
-    """CREATE TRIGGER round_state_forward BEFORE UPDATE OF state ON rounds WHEN OLD.state <> 'agreed' AND NOT (
+    """CREATE TRIGGER round_state_forward BEFORE UPDATE OF state ON rounds
+        WHEN OLD.state <> 'agreed' AND NOT (
             (OLD.state = 'draft' AND NEW.state = 'issued') OR (OLD.state = 'issued' AND NEW.state = 'agreed'))
         BEGIN SELECT RAISE(ABORT, 'states move from draft to issued to agreed'); END""",
     """CREATE TRIGGER round_content_update BEFORE UPDATE OF id, round, revision, frequency, closing,

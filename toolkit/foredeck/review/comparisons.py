@@ -78,6 +78,11 @@ def _lines(place: Path, needed: Sequence[str]) -> Iterator[tuple[str, dict[str, 
                                       allowed=", ".join(heading) or "a heading row",
                                       do="correct the column's name")
             for row in reader:
+                if None in row:  # an unquoted comma for thousands would silently cut the value short
+                    raise IntakeError("the row has more fields than the heading",
+                                      where=f"{place.name} line {reader.line_num}",
+                                      allowed="one field a column",
+                                      do="write 1250, not 1,250; put quotation marks around text with commas")
                 fields = {key: (row[key] or "").strip() for key in needed}
                 yield f"{place.name} line {reader.line_num}", fields
     except FileNotFoundError as fault:
