@@ -85,7 +85,7 @@ def _notes(rows: pd.DataFrame, outside: pd.DataFrame, axis: Any, outer: int, dec
     wanted = [(float(end["actual"]), label("actual"), "ink"), (float(end["forecast"]), label("said"), "ochre"),
               (float(end[f"upper_{outer}"]), level_label(outer, short), "ink2")]
     wanted = [w for w in wanted if w[0] == w[0]]
-    heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT)
+    heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT, 20)
     notes = [note(float(end["at"]) + 0.5, y, text, token, xshift=6, bold=token == "ink", size=12 if short else 13)
              for y, (_, text, token) in zip(heights, wanted, strict=True)]
     for row in outside.to_dict("records"):

@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from html import escape
+from textwrap import wrap
 from typing import Any
 
 import pandas as pd
 
 from foredeck.charts.figure import Figure, note, scatter
 from foredeck.charts.labels import label
-from foredeck.charts.scale import decimals_for, number, pushed_apart, value_axis
+from foredeck.charts.scale import ValueAxis, decimals_for, number, pushed_apart, value_axis
 from foredeck.charts.source import StudyLike
-from foredeck.charts.theme import colour, role
+from foredeck.charts.theme import role
 from foredeck.charts.time_axis import TimeAxis
 
 HEIGHT, TOP, FOOT, MOST = 320, 14, 40, 6
@@ -68,20 +70,32 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
             for p, v in zip(ahead["at"], ahead["baseline"], strict=True)]
     data.append(scatter(ahead["at"], ahead["baseline"], role("forecast"), said))
     first, last = int(ahead["at"].iloc[0]), int(ahead["at"].iloc[-1])
-    heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT)
-    notes = [note(last, y, text, token, xshift=12, bold=token == "plum", size=12)
-             for y, (_, text, token) in zip(heights, wanted, strict=True)]
     widest = max(len(w[1]) for w in wanted)
-    margin = {"l": axis.margin, "r": 24 + round(6.6 * widest), "t": TOP, "b": FOOT}
+    margin = {"l": axis.margin, "r": 24 + round(6.4 * min(widest, 34)), "t": TOP, "b": FOOT}
     layout: dict[str, Any] = {
-        "height": HEIGHT, "margin": margin, "annotations": notes, "yaxis": axis.layout(),
-        "xaxis": {"range": [first - 0.6, last + 0.6], "tickcolor": colour("rule"), **time.ticks(first, last, 560)}}
-    narrow = {"scale": 0.8, "margin": {**margin, "l": axis.margin - 4}, "xaxis": time.ticks(first, last, 120)}
+        "height": HEIGHT, "margin": margin, "annotations": _notes(wanted, last, axis, 34, 20), "yaxis": axis.layout(),
+        "xaxis": {"range": [first - 0.6, last + 0.6], **time.ticks(first, last, 500)}}
+    narrow = {"scale": 0.8, "margin": {**margin, "l": axis.margin - 4, "r": 24 + round(6.4 * min(widest, 15))},
+              "annotations": _notes(wanted, last, axis, 15, 42), "xaxis": time.ticks(first, last, 150)}
     now = used[used["lead"] == 1]["forecast"]
     alt = label("members alt", n=len(order), when=time.name(first), low=number(float(now.min()), decimals),
                 high=number(float(now.max()), decimals), unit=unit)
-    return Figure(id, data, layout, narrow, label("members lead", unit=unit), label("members rest"), alt,
+    return Figure(id, data, layout, narrow, label("members lead", unit=unit),
+                  label("members rest") + (label("members from") if axis.low > 0 else ""), alt,
                   _table(used, order, time, decimals, names))
+
+
+def _notes(wanted: list[tuple[float, str, str]], last: int, axis: ValueAxis, letters: int,
+           gap: float) -> list[dict[str, Any]]:
+    """Name the lines at their ends, pushed apart; long names take several lines of `letters` letters."""
+    heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT, gap)
+    notes = []
+    for y, (_, text, token) in zip(heights, wanted, strict=True):
+        made = note(last, y, text, token, xshift=12, bold=token == "plum", size=12, align="left")
+        if token != "plum":
+            made["text"] = "<br>".join(escape(line, quote=False) for line in wrap(text, letters))
+        notes.append(made)
+    return notes
 
 
 def shown(method: str, names: Mapping[str, str] | None) -> str:

@@ -14,6 +14,8 @@ from foredeck.charts.theme import colour, role
 from foredeck.charts.time_axis import SHOWN, TimeAxis
 
 HEIGHT, TOP, FOOT, RIGHT = 420, 26, 40, 108
+GAP, GAP_SHORT = 21, 17
+"""Pixels between labels; wide charts are printed at four fifths of their height."""
 
 
 def outlook(study: StudyLike, id: str = "outlook") -> Figure:
@@ -158,7 +160,7 @@ class _Outlook:
             said = label("said") if short else label("said last round")
             wanted.append((float(self.before.sort_values("at")["adjusted"].iloc[-1]), said, "ochre"))
         wanted = [w for w in wanted if w[0] == w[0]]
-        heights = pushed_apart([w[0] for w in wanted], self.axis, pixels)
+        heights = pushed_apart([w[0] for w in wanted], self.axis, pixels, GAP_SHORT if short else GAP)
         return [note(self.last + 0.5, y, text, token, xshift=7, bold=token == "plum", size=12 if short else 13)
                 for y, (_, text, token) in zip(heights, wanted, strict=True)]
 
@@ -178,7 +180,11 @@ class _Outlook:
         shown = self.past[(self.past["at"] >= begin) & self.past["used"].notna()]
         if shown.empty:
             return []
-        top = shown.loc[shown["used"].idxmax()]
+        # Half the width of both labels, in periods: a label so far from a repair's does not touch it.
+        reach = (50 if short else 100) * (self.last - begin + 1) / (230 if short else 690)
+        mended = shown.loc[shown["repaired"], "at"]
+        clear = shown[[not (mended - at).abs().lt(reach).any() for at in shown["at"]]]
+        top = (clear if len(clear) else shown).loc[lambda t: t["used"].idxmax()]
         at = int(top["at"])
         text = label("actual") if short else f"{label('actual')}, {self.time.name(at)}: {self.write(top['used'])}"
         third = (at - begin) / max(1, -begin)

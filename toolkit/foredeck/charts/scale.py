@@ -100,6 +100,9 @@ def pushed_apart(heights: Sequence[float], axis: ValueAxis, pixels: float, gap: 
         while len(blocks) > 1 and blocks[-1][0] - blocks[-2][0] < gap * (blocks[-1][1] + blocks[-2][1]) / 2:
             (b, m), (a, n) = blocks.pop(), blocks.pop()
             blocks.append(((a * n + b * m) / (n + m), n + m))
+    # No label hangs over an end of the axis, where ticks or the close line's words stand.
+    low, high = axis.low * scale, axis.high * scale
+    blocks = [(min(max(c, low + gap * n / 2), max(high - gap * n / 2, low + gap * n / 2)), n) for c, n in blocks]
     placed = [centre + gap * (i - (size - 1) / 2) for centre, size in blocks for i in range(size)]
     done = [0.0] * len(heights)
     for k, y in zip(order, placed, strict=True):

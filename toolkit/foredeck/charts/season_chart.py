@@ -90,7 +90,7 @@ def season_figure(actuals: pd.DataFrame, adjusted: pd.DataFrame, *, frequency: s
               (float(earlier[earlier["position"] == length - 1]["value"].mean()), label("season earlier"), "ink2")]
     if drawn:
         wanted.append((dict(zip(at, forecast, strict=True)).get(length - 1, 100.0), label("season used"), "plum"))
-    heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT)
+    heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT, 20)
     notes = [note(length - 0.5, y, text, token, xshift=6, bold=token == "ink")
              for y, (_, text, token) in zip(heights, wanted, strict=True)]
     step = {12: 1, 4: 1}.get(length, 4)

@@ -138,7 +138,8 @@ class _Strip:
         level = level_label(self.level, short=not large)
         span = f"{self.write(self.outer[0])} to {self.write(self.outer[1])}"
         parts = []
-        if LETTER * len(level) + 14 < edge - left:
+        reach = left + 14 + LETTER * len(level)
+        if reach < edge and not any(left < x(v) < reach + 8 for v in (self.past, self.said) if math.isfinite(v)):
             parts.append(_text(left + 8, y + 4.5, level))
         if large and LETTER * len(span) + 14 < right - far:
             parts.append(_text(right - 8, y + 4.5, span, anchor="end"))
@@ -153,14 +154,16 @@ class _Strip:
         if math.isfinite(self.past):
             marks.append((x(self.past), f"{self.past_name}: {self.known(self.past)}", "ink2"))
         marks.sort(key=lambda mark: mark[0])
-        parts, taken = [], []
-        for k, (place, text, token_name) in enumerate(marks):
+        parts: list[str] = []
+        nearest = math.inf
+        # From the right: a label that would reach the next mark's label rises above it, so that no line crosses words.
+        for k, (place, text, token_name) in reversed(list(enumerate(marks))):
             size = LETTER * len(text)
             anchor = "end" if k == 0 and len(marks) == 2 else "start"
             anchor = "start" if place - size < 0 else "end" if place + size > width else anchor
-            left, right = (place - size, place) if anchor == "end" else (place, place + size)
-            rise = 30 if any(left < b + 10 and right > a - 10 for a, b in taken) else 14
-            taken.append((left, right))
+            right = place if anchor == "end" else place + size
+            rise = 32 if right > nearest - 10 else 14
+            nearest = place - size if anchor == "end" else place
             middle = y + tall / 2
             shift = -3 if anchor == "start" else 3
             if token_name == "ochre":

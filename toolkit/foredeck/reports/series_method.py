@@ -14,7 +14,7 @@ from foredeck.reports.fragments import Part, Section, paragraph, say
 from foredeck.reports.page_texts import text
 from foredeck.study import Study
 from foredeck.tables.html import Column, pairs, table
-from foredeck.wording.catalogue import method_name
+from foredeck.wording.catalogue import method_name, upper_first
 from foredeck.wording.catalogue import say as words
 from foredeck.wording.facts import SeriesFacts, facts_of
 from foredeck.wording.numbers import Rounding, percent, plain
@@ -78,7 +78,7 @@ def _methods(study: Study, facts: SeriesFacts) -> str:
     rows = []
     for row in study.eligibility.to_dict("records"):
         weight, missed = float(part.get(row["method"], 0.0)), float(miss.get(row["method"], math.nan))
-        reason = "" if weight > 0 else str(row["reason"] or text("not weighted"))
+        reason = "" if weight > 0 else upper_first(str(row["reason"] or text("not weighted")))
         rows.append({"method": method_name(str(row["method"])), "part": percent(weight) if weight > 0 else "",
                      "miss": Rounding.of_two_figures(missed).text(missed), "reason": reason, "weight": -weight})
     frame = pd.DataFrame(rows).sort_values(["weight", "method"], kind="stable")

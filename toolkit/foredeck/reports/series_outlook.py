@@ -37,7 +37,7 @@ def outlook(study: Study) -> Section | None:
         lead=words("outlook table", count=count, plural=plural if count > 1 else facts.frequency.noun,
                    unit=study.unit),
         rest=words("outlook table note"))
-    return Section("outlook", words("outlook title"), words("outlook sub", plural=plural), [
+    return Section("outlook", words("outlook title"), words("outlook sub", count=count, plural=plural if count > 1 else facts.frequency.noun), [
         say(outlook_words(facts, study.adjusted, study.actuals)), outlook_chart(study), made,
         paragraph(note, "note"), paragraph(landing_words(facts, study.totals))])
 

@@ -47,7 +47,7 @@ def numbers(study: Study) -> Section:
     sub = words("numbers sub cut", count=most) if cut else words("numbers sub")
     made, partial = _by_year(shown, study, facts)
     notes = [words("numbers repaired")] if shown["repaired"].any() else []
-    notes += [words("numbers part")] if partial else []
+    notes += [words("numbers part", noun=facts.frequency.noun)] if partial else []
     return Section("numbers", words("numbers title"), sub, [made, paragraph(" ".join(notes), "note")])
 
 
@@ -75,7 +75,7 @@ def _by_year(shown: pd.DataFrame, study: Study, facts: SeriesFacts) -> tuple[str
         whole = len(part) == len(names) and bool(part["value"].notna().all())
         partial |= not whole
         total = plain(float(part["value"].sum()), facts.decimals)
-        rows.append({"year": str(year), "all": Cell(total, mark="" if whole else "*"),
+        rows.append({"year": Cell(str(year), mark="" if whole else "*"), "all": total,
                      **{n: cell(part[part["position"] == k]) for k, n in enumerate(names)}})
     if frequency is Frequency.YEARLY:
         columns = [Column("year", text("year")), Column("", text("actual"), css="n")]

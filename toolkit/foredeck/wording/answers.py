@@ -48,14 +48,14 @@ def _moved(facts: SeriesFacts) -> str:
         return say("headline same")
     text = say("headline more" if size > 0 else "headline less", size=facts.figures.text(abs(size)))
     surprise, step = facts.last_miss, facts.figures.step
+    why = []
     if facts.last_said_by_round and abs(surprise) >= 2 * step and surprise * size > 0:
-        text += say(f"headline surprise {'above' if surprise > 0 else 'below'}",
-                    last=near_name(facts.closing, facts.frequency), actual=plain(facts.last_actual, facts.decimals),
-                    miss=facts.figures.text(abs(surprise)))
+        why.append(say(f"headline surprise {'above' if surprise > 0 else 'below'}",
+                       last=near_name(facts.closing, facts.frequency), miss=facts.figures.text(abs(surprise))))
     added = facts.adjustment - facts.previous_adjustment
     if facts.figures.nice(added) != 0 and facts.figures.nice(facts.adjustment) != 0:
-        text += say("headline adjusted", size=signed(facts.adjustment, facts.decimals))
-    return text
+        why.append(say("headline adjusted", size=signed(facts.adjustment, facts.decimals)))
+    return text + (say("headline because", why=say("headline and").join(why)) if why else "")
 
 
 def _against_year(facts: SeriesFacts) -> str:

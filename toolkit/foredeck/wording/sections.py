@@ -120,8 +120,8 @@ def changed_words(facts: SeriesFacts, changes: pd.DataFrame) -> str:
     parts = [say("changed say", when=near_name(first["period"], facts.frequency), round=facts.previous_round,
                  before=write.text(first["before"]), now=write.text(first["now"]))]
     if write.nice(first["adjustment"]) != 0:
-        parts.append(say("changed adjustment", size=write.signed(first["adjustment"])))
-        parts.append(say("changed baseline", size=write.signed(first["change"] - first["adjustment"])))
+        added = write.nice(first["adjustment"])
+        parts.append(say("why split", baseline=write.signed(first["change"] - added), adjustment=write.signed(added)))
     most = changes.loc[changes["change"].abs().idxmax()]
     if most["period"] != first["period"]:
         parts.append(say("changed most", when=long_name(most["period"], facts.frequency),
