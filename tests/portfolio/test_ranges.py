@@ -42,10 +42,14 @@ def test_ranges_of_an_origin_rest_only_on_errors_known_then() -> None:
 
 
 def test_few_origins_widen_the_range() -> None:
-    rng = np.random.default_rng(3)
-    one = rng.normal(size=(1, 8, 1))
-    lone = multipliers(one, (90,))[0, 0, :, 0]
-    assert lone.sum() / 2 > 1.2 * np.quantile(np.abs(one[0, 1:, 0]), 0.9)
+    # symmetric errors, so that both quantile rules agree: only the widening is left
+    once = np.array([-2.0, -1.0, 1.0, 2.0])
+    few = multipliers(np.concatenate([[0.0], once])[None, :, None], (90,))[0, 0, 0, 0]
+    many = multipliers(np.concatenate([[0.0], np.tile(once, 100)])[None, :, None], (90,))[0, 0, 0, 0]
+    # t with 4 degrees of freedom against t with 400, 95th percentiles (from printed tables): 2.132 and 1.649
+    quantiles = np.quantile(once, 0.95) + np.quantile(np.abs(once), 0.9)
+    quantiles_many = np.quantile(np.tile(once, 100), 0.95) + np.quantile(np.abs(np.tile(once, 100)), 0.9)
+    assert few / many == pytest.approx(2.132 / 1.649 * quantiles / quantiles_many, rel=1e-3)
 
 
 def test_a_first_forecast_without_any_past_error_still_gets_a_wide_range() -> None:

@@ -29,7 +29,7 @@ class ForedeckError(Exception):
 
     exit_code: ClassVar[int] = 1
 
-    def __init__(self, what: str, *, where: str = "", allowed: str = "", do: str = "", **data: Any) -> None:
+    def __init__(self, what: str, *, where: str = "", allowed: str = "", do: str = "", **data: Any) -> None:  # noqa: D107
         super().__init__(what)
         self.what = what
         self.where = where
@@ -37,13 +37,13 @@ class ForedeckError(Exception):
         self.do = do
         self.data = data
 
-    def __str__(self) -> str:
+    def __str__(self) -> str:  # noqa: D105
         lines = [self.what]
         lines += [f"  {head}: {text}" for head, text in
                   (("where", self.where), ("allowed", self.allowed), ("next", self.do)) if text]
         return "\n".join(lines)
 
-    def __reduce__(self) -> tuple[Any, ...]:
+    def __reduce__(self) -> tuple[Any, ...]:  # noqa: D105
         return _rebuild, (type(self), self.what, self.where, self.allowed, self.do, self.data)
 
 

@@ -102,14 +102,15 @@ class Study:
             f"<td>{getattr(r, f'lower_{level}'):,.0f} to {getattr(r, f'upper_{level}'):,.0f}</td></tr>"
             for r in self.adjusted.head(6).itertuples())
         ahead = self.reliability[self.reliability["lead"] == 1].tail(12)
-        inside = int(((ahead["actual"] >= ahead[f"lower_{level}"]) & (ahead["actual"] <= ahead[f"upper_{level}"])).sum())
+        inside = int(ahead["actual"].between(ahead[f"lower_{level}"], ahead[f"upper_{level}"]).sum())
         known = int(ahead[f"lower_{level}"].notna().sum())
         trust = (f"Of the last {known} forecasts one ahead, {inside} came in inside their {level} in 100 range."
                  if known else "No past forecast has been tested yet.")
         found = len(self.findings)
         return (
             f"<div><p><b>{escape(self.name)}</b>, {escape(self.unit)}; known up to {escape(self.closing)}.</p>"
-            f"<table><thead><tr><th style='text-align:left'>Period</th><th>Forecast</th><th>{level} in 100</th></tr></thead>"
+            f"<table><thead><tr><th style='text-align:left'>Period</th><th>Forecast</th><th>{level} in 100</th></tr>"
+            f"</thead>"
             f"<tbody>{rows}</tbody></table>"
             f"<p>{escape(str(self.info['method_words']))}<br>{escape(str(self.info['pattern_words']))}<br>"
             f"{trust} {found or 'No'} finding{'' if found == 1 else 's'} in the data.</p></div>")
@@ -213,7 +214,7 @@ def _as_history(series: SeriesHistory | pd.Series[Any]) -> SeriesHistory:
     if not isinstance(series, pd.Series) or not isinstance(series.index, pd.PeriodIndex) or series.empty:
         raise MethodError(f"a study needs to know the periods; this is a {type(series).__name__} without them",
                           allowed="a series history, or a pandas Series over a PeriodIndex",
-                          do='take one of what fd.read returned, or give the Series an index: pd.period_range(..., freq="M")')
+                          do="take one of what fd.read returned, or index the Series by pandas.period_range")
     index = pd.period_range(series.index.min(), series.index.max(), freq=series.index.freq)
     values = series.reindex(index).to_numpy(dtype=np.float64)
     return SeriesHistory(name=str(series.name or "series"), frequency=frequency_of(index), periods=index, values=values)
@@ -226,7 +227,7 @@ def unadjusted(forecasts: pd.DataFrame) -> pd.DataFrame:
     return table.assign(adjusted=forecasts["baseline"], **{c: forecasts[c] for c in limits})
 
 
-_EMPTY = {
+_EMPTY: dict[str, dict[str, Any]] = {
     "adjustments": {"series": str, "period": str, "lead": "int64", "baseline": float, "adjustment": float,
                     "adjusted": float, "kind": str, "reason": str, "name": str, "made_on": str, "scope": str},
     "comparisons": {"name": str, "series": str, "period": str, "value": float},

@@ -10,7 +10,7 @@ import typer
 from foredeck.checks.findings import find
 from foredeck.intake.history import History
 from foredeck.periods import period_name
-from foredeck.rounds.states import closing_of, read_history
+from foredeck.rounds.source import closing_of, read_history
 from foredeck.settings import load_settings
 
 NEEDS_A_PERSON = 4
@@ -48,12 +48,9 @@ def worst_first(history: History, closing: pd.Period, nonnegative: bool) -> pd.D
         found = find(series, closing, nonnegative=nonnegative)
         price = series.unit_value if pd.notna(series.unit_value) else 1.0
         size = float(pd.Series(series.values).abs().mean())
-        tables.append(found.assign(stake=size * price, period=[_name(p) for p in found["period"]]))
+        tables.append(found.assign(stake=size * price))
     filled = [t for t in tables if len(t)] or tables[:1]
     table = pd.concat(filled, ignore_index=True)
     return table.sort_values(["kind", "stake", "series", "period"], ascending=[True, False, True, True],
                              ignore_index=True)
 
-
-def _name(period: object) -> str:
-    return period_name(period) if isinstance(period, pd.Period) else ""

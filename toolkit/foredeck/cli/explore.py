@@ -9,7 +9,7 @@ import typer
 from foredeck.assets import notebook_path
 from foredeck.pack.file_names import file_name
 from foredeck.reports.execute import run_notebook
-from foredeck.rounds.states import read_history
+from foredeck.rounds.source import read_history
 from foredeck.settings import load_settings
 
 

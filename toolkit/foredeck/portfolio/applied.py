@@ -34,7 +34,7 @@ def apply_fit(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> dict[str
         "series": _series_row(alone, procedure, names),
         "actuals": pd.DataFrame({"series": alone.series.name, "period": names, "raw": alone.raw, "used": alone.used,
                                  "repaired": ~np.isclose(alone.raw, alone.used, equal_nan=False)}),
-        "findings": _findings(alone),
+        "findings": alone.findings,
         "eligibility": pd.DataFrame({"series": alone.series.name, "method": list(alone.reasons),
                                      "eligible": [not r for r in alone.reasons.values()],
                                      "reason": list(alone.reasons.values())}),
@@ -61,13 +61,6 @@ def _limits(forecast: Array, scale: Array, fit: PortfolioFit, offset: int) -> di
     if fit.nonnegative:
         columns = {name: np.maximum(values, 0.0) for name, values in columns.items()}
     return columns
-
-
-def _findings(alone: Alone) -> pd.DataFrame:
-    table = alone.findings.copy()
-    table["period"] = [p if isinstance(p, str) else "" if p is None or p is pd.NaT else period_name(p)
-                       for p in table["period"]]
-    return table
 
 
 def _error_table(alone: Alone) -> pd.DataFrame:
@@ -104,7 +97,8 @@ def _reliability(alone: Alone, procedure: Procedure, fit: PortfolioFit, scale: A
             "forecast": procedure.forecasts[o, leads], "actual": alone.cube.actual[o, leads],
             **{name: values[leads] for name, values in limits.items()}, "benchmark": benchmark[o, leads]}))
     if not rows:
-        columns = ["origin", "period", "lead", "forecast", "actual", *_limits(scale[-1], scale[-1], fit, 0), "benchmark"]
+        limits = _limits(scale[-1], scale[-1], fit, 0)
+        columns = ["origin", "period", "lead", "forecast", "actual", *limits, "benchmark"]
         table = pd.DataFrame({c: pd.Series(dtype=str if c in ("origin", "period") else float) for c in columns})
     else:
         table = pd.concat(rows, ignore_index=True)
@@ -118,7 +112,8 @@ def _series_row(alone: Alone, procedure: Procedure, names: list[str]) -> pd.Data
     used = [m for m, w in zip(alone.cube.methods, procedure.weights[-1], strict=True) if w > 0]
     return pd.DataFrame([{
         "series": series.name, **dict(series.groups), "unit": series.unit, "unit_value": series.unit_value,
-        "status": "forecast", "reason": "", "first_period": names[0], "last_period": names[-1],
+        "status": "forecast", "reason": "", "first_period": names[0],
+        "last_period": names[int(np.flatnonzero(np.isfinite(alone.raw))[-1])],
         "n_periods": int(np.isfinite(alone.raw).sum()), "trend_strength": seen.trend_strength,
         "season_strength": seen.season_strength, "adi": seen.adi, "cv2": seen.cv2,
         "demand_class": seen.demand_class, "pattern_words": alone.pattern_words,
@@ -131,5 +126,4 @@ def method_words(used: list[str]) -> str:
     if len(used) == 1:
         return METHODS[used[0]].sentence
     titles = [METHODS[name].title for name in used]
-    return (f"The forecast is the plain mean of {len(titles)} methods: "
-            f"{', '.join(titles[:-1])} and {titles[-1]}.")
+    return f"The forecast is the plain mean of {len(titles)} methods: {'; '.join(titles)}."

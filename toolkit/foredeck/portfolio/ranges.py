@@ -4,8 +4,8 @@ An error is divided by its series' scale; standardised errors of all series toge
 give the multipliers, per lead and level. Only errors known at an origin make the
 ranges of that origin, so the coverage that is reported was achieved, not fitted
 (split conformal prediction with whole origins kept together; Vovk, Gammerman & Shafer
-2005, chapter 2, for exchangeable errors. Errors of successive origins overlap and series
-share shocks, so few origins are widened as Student's t is).
+2005, chapter 2, for exchangeable errors. Series share shocks, so that few origins are few
+errors however many the series: the multipliers are widened as Student's t is).
 """
 
 from __future__ import annotations
@@ -21,7 +21,7 @@ Array = NDArray[np.float64]
 
 OWN_SHARE = 2 / 3
 """Most that a series' own backtest errors count in its scale; the rest is its naive error, which is
-steadier (a geometric mean of several scales covered best over the M3 series)."""
+steadier."""
 
 MIN_ORIGINS = 4
 """A lead gets no range from fewer origins than this; the nearest shorter lead's is widened instead."""
@@ -99,7 +99,7 @@ def multipliers(standardised: Array, levels: tuple[int, ...]) -> Array:
                                            else _without_errors(levels) if offset == 0 else np.nan)
                 continue
             for at, level in enumerate(levels):
-                out[offset, at, :, lead] = _both_sides(pooled, level / 100, origins * together / (lead + 1))
+                out[offset, at, :, lead] = _both_sides(pooled, level / 100, origins * together)
     return out
 
 

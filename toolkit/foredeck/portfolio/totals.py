@@ -10,10 +10,10 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from foredeck.periods import FinancialYear, period_name
+from foredeck.portfolio.alone import Alone
 from foredeck.portfolio.applied import window_scale
 from foredeck.portfolio.fit import PortfolioFit
 from foredeck.portfolio.joint_totals import WindowErrors, total_range, window_errors
-from foredeck.portfolio.alone import Alone
 from foredeck.portfolio.procedure import Procedure
 
 Array = NDArray[np.float64]
@@ -104,7 +104,7 @@ def _scopes(alones: Sequence[Alone], groups: Sequence[str]) -> list[tuple[str, s
 
 def _matrix(adjusted: pd.DataFrame, column: str, names: list[str], horizon: int) -> Array:
     wide = adjusted.pivot(index="series", columns="lead", values=column)
-    return np.asarray(wide.loc[names, range(1, horizon + 1)].to_numpy(dtype=np.float64))
+    return np.asarray(wide.reindex(index=names, columns=list(range(1, horizon + 1))).to_numpy(dtype=np.float64))
 
 
 def _around(alones: Sequence[Alone], window: Window) -> tuple[Array, Array]:

@@ -72,7 +72,7 @@ def compute_round(history: History, closing: pd.Period, settings: Settings, prog
     tables = {name: _joined(parts, name, known.names) for name in
               ("series", "actuals", "findings", "eligibility", "error_table", "members", "forecasts", "reliability")}
     tables["failures"] = pd.DataFrame(failures) if failures else empty_table("failures")
-    tables["adjustments"], tables["adjusted"] = _adjusted(tables, settings)
+    tables["adjustments"], tables["adjusted"] = _adjusted(tables, closing, settings)
     tables["comparisons"] = _comparisons(settings)
     tables["totals"] = totals_table(alones, procedures, fit, standardised, tables["adjusted"],
                                     list(settings.columns.groups), dict(settings.windows),
@@ -85,8 +85,9 @@ def compute_round(history: History, closing: pd.Period, settings: Settings, prog
 def forecast_options(settings: Settings) -> ForecastOptions:
     """The part of the settings that the passes need."""
     forecast = settings.forecast
+    constants = {str(name): value for name, value in forecast.constants.items()}
     return ForecastOptions(horizon=forecast.horizon, levels=tuple(forecast.levels), style=forecast.style,
-                           methods=tuple(forecast.methods), constants=dict(forecast.constants) or None,
+                           methods=tuple(forecast.methods), constants=constants or None,
                            nonnegative=forecast.nonnegative)
 
 
@@ -147,7 +148,6 @@ def _unforecast(known: History, name: str, closing: pd.Period, status: str, reas
            "status": status, "reason": reason, "first_period": names[0], "last_period": names[-1],
            "n_periods": int(pd.notna(series.values).sum())}
     findings = find(series, closing) if status == "not forecast" else find(series, closing).iloc[:0]
-    findings = findings.assign(period=[period_name(p) if isinstance(p, pd.Period) else "" for p in findings["period"]])
     return {"series": pd.DataFrame([row]), "findings": findings,
             "actuals": pd.DataFrame({"series": name, "period": names, "raw": series.values, "used": series.values,
                                      "repaired": False})}
@@ -161,10 +161,14 @@ def _joined(parts: list[dict[str, pd.DataFrame]], name: str, order: list[str]) -
     return whole.sort_values("series", key=lambda s: s.map(rank), kind="stable", ignore_index=True)
 
 
-def _adjusted(tables: Mapping[str, pd.DataFrame], settings: Settings) -> tuple[pd.DataFrame, pd.DataFrame]:
+def _adjusted(tables: Mapping[str, pd.DataFrame], closing: pd.Period,
+              settings: Settings) -> tuple[pd.DataFrame, pd.DataFrame]:
     if settings.adjustments.file is None:
         return empty_table("adjustments"), unadjusted(tables["forecasts"])
     rows = read_adjustments(settings.adjustments.file)
+    # what was decided after the next period had closed belongs to a later round
+    next_closed = str((closing + 1).end_time.date())
+    rows = rows[rows["made_on"].fillna("").astype(str) <= next_closed].reset_index(drop=True)
     adjustments, adjusted = apply_adjustments(tables["forecasts"], tables["series"], rows,
                                               nonnegative=settings.forecast.nonnegative)
     return adjustments, adjusted
@@ -174,5 +178,6 @@ def _comparisons(settings: Settings) -> pd.DataFrame:
     if settings.comparisons.budget is None:
         return empty_table("comparisons")
     columns = settings.columns
-    return read_comparison(settings.comparisons.budget, "budget", series=columns.series, period=columns.period,
-                           value=columns.value)
+    # a wide source has no column of periods or values: there the file's own heads must be the plain ones
+    return read_comparison(settings.comparisons.budget, "budget", series=columns.series,
+                           period=columns.period or "period", value=columns.value or "value")

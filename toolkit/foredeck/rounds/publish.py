@@ -8,7 +8,6 @@ of either. What a killed run finished there is used again.
 from __future__ import annotations
 
 import json
-import os
 import shutil
 from concurrent.futures import ProcessPoolExecutor, as_completed
 from dataclasses import dataclass, replace
@@ -130,7 +129,7 @@ def _try(notebook: Path, parameters: dict[str, object], path: Path, template: st
         try:
             run_notebook(notebook, working, parameters)
             export_html(working, page, template, plotly_js="beside")
-            os.replace(page, path)
+            page.replace(path)
             reason = ""
             break
         except ForedeckError as error:
@@ -183,8 +182,8 @@ def _exchange(staging: Path, place: Path) -> None:
     old = _old(place)
     shutil.rmtree(old, ignore_errors=True)
     if place.exists():
-        os.replace(place, old)
-    os.replace(staging, place)
+        place.replace(old)
+    staging.replace(place)
     shutil.rmtree(old, ignore_errors=True)
 
 
@@ -192,7 +191,7 @@ def _repair_exchange(place: Path) -> None:
     """A run killed between the two moves of an exchange left no pack: put the old one back."""
     old = _old(place)
     if old.exists() and not place.exists():
-        os.replace(old, place)
+        old.replace(place)
 
 
 def _old(place: Path) -> Path:

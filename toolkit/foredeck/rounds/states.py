@@ -15,14 +15,14 @@ from typing import Any
 
 import pandas as pd
 
-from foredeck.errors import RoundStateError, SettingsError
-from foredeck.intake.files import read
-from foredeck.intake.history import History, closing_period
+from foredeck.errors import RoundStateError
+from foredeck.intake.history import History
 from foredeck.ledger.round_record import RoundRecord
 from foredeck.ledger.store import Ledger, open_ledger
-from foredeck.periods import parse_period, period_name
+from foredeck.periods import period_name
 from foredeck.rounds.compute import Progress, compute_round, data_fingerprint, made_with
 from foredeck.rounds.publish import Published, publish
+from foredeck.rounds.source import closing_of, read_history
 from foredeck.settings import Settings
 from foredeck.study import versions
 
@@ -37,33 +37,6 @@ class Outcome:
     cover: Path
     lines: tuple[str, ...] = field(default=())
     exit_code: int = 0
-
-
-def read_history(settings: Settings) -> History:
-    """Read the actuals that the settings name."""
-    source, columns = settings.source, settings.columns
-    return read(source.file, layout=source.layout, series=columns.series, period=columns.period, value=columns.value,
-                groups=list(columns.groups), unit=settings.series.unit, unit_value=columns.unit_value,
-                frequency=settings.series.frequency, date_format=source.date_format, sheet=source.sheet,
-                gaps=settings.series.gaps, sum_rows=source.sum_rows, delimiter=source.delimiter,
-                decimal=source.decimal)
-
-
-def closing_of(history: History, settings: Settings, period: str = "") -> pd.Period:
-    """The last closed period: the one asked for, or the one that the closing rule finds.
-
-    Raises
-    ------
-    SettingsError
-        if the period asked for lies outside the history.
-    """
-    if not period:
-        return closing_period(history, settings.closing.rule, settings.closing.share)
-    asked = parse_period(period, history.frequency)
-    if not history.actuals["period"].min() < asked <= history.last_period:
-        raise SettingsError(f"the history does not reach {period}", where="--period",
-                            allowed=f"up to {period_name(history.last_period)}", do="name a period with actuals")
-    return asked
 
 
 def run_round(settings: Settings, period: str, progress: Progress) -> Outcome:
