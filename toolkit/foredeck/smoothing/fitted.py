@@ -184,7 +184,8 @@ def from_forecasts(
     """Make a `Fitted` from the one-step forecasts of a method, NaN where there is none."""
     residuals = values - one_step
     known = np.isfinite(residuals)
-    sse = float(np.sum(residuals[known] ** 2))
+    with np.errstate(over="ignore", under="ignore"):  # squares of very large values may be infinite
+        sse = float(np.sum(residuals[known] ** 2))
     return Fitted(
         method=method, title=title, constants=constants or {}, initial=initial or {}, final=final or {},
         fitted=one_step, residuals=residuals, sse=sse, n_parameters=n_parameters,

@@ -119,11 +119,12 @@ def fit_form(
     if handling != HOLD:
         estimated += 1 + form.trend + (m - 1)
     share = gamma * (1.0 - alpha) if new_level else gamma
+    sse *= scale * scale  # not scale**2, which raises where the square leaves the number range
     return Fitted(
         method=form.name, title=form.title, constants={name: used[name] for name in form.constants},
         initial=before, final=after, fitted=values - errors * scale, residuals=errors * scale,
-        sse=sse * scale**2, n_parameters=estimated, season_length=season_length,
-        sigma2=variance(sse * scale**2, y.size - first, estimated),
+        sse=sse, n_parameters=estimated, season_length=season_length,
+        sigma2=variance(sse, y.size - first, estimated),
         limits=(float(values.min()), float(values.max())),
         path=partial(_path, n=y.size, season=form.season, m=m, phi=phi, state=last),
         spread=None if form.season == MULTIPLICATIVE else partial(
