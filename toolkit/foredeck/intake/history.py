@@ -172,7 +172,7 @@ class History:
 
     @cached_property
     def _columns(self) -> tuple[pd.PeriodIndex, NDArray[np.float64]]:
-        return pd.PeriodIndex(self.actuals["period"]), self.actuals["value"].to_numpy(dtype=float)
+        return pd.PeriodIndex(self.actuals["period"]).rename(None), self.actuals["value"].to_numpy(dtype=float)
 
     @cached_property
     def _faults_by_series(self) -> dict[str, pd.DataFrame]:
@@ -290,6 +290,8 @@ def closing_period(history: History, rule: Literal["all", "share"] = "all", shar
 
 
 def _faults_up_to(faults: pd.DataFrame, period: pd.Period, frequency: Frequency) -> pd.DataFrame:
+    if faults.empty:
+        return faults
     kept = {text: parse_period(text, frequency) <= period for text in faults["period"].unique()}
     return faults[faults["period"].map(kept).astype(bool)].reset_index(drop=True)
 
