@@ -15,15 +15,17 @@ from multiprocessing import get_context
 from pathlib import Path
 
 from foredeck.assets import notebook_path
-from foredeck.errors import ForedeckError, SettingsError
+from foredeck.errors import ForedeckError, ReportError, SettingsError
 from foredeck.ledger.round_record import RoundRecord
 from foredeck.ledger.store import Ledger
 from foredeck.pack.data_files import write_forecasts
 from foredeck.pack.file_names import file_names
 from foredeck.pack.manifest import pack_files, verify, write_manifest
 from foredeck.pack.workbook import write_workbook
+from foredeck.periods import Frequency
+from foredeck.reports.cover_record import cautions
 from foredeck.reports.execute import run_notebook
-from foredeck.reports.export import export_html
+from foredeck.reports.export import export_html, put_plotly_beside
 from foredeck.review.watch import watch_list
 from foredeck.rounds.compute import Progress
 from foredeck.settings import Settings
@@ -122,21 +124,19 @@ def make_report(ledger: str, round: str, series: str, path: Path) -> str:
     return _try(notebook_path("series_report"), parameters, path, "foredeck-report")
 
 
-def _try(notebook: Path, parameters: dict[str, object], path: Path, template: str) -> str:
-    working, page = path.with_suffix(".ipynb"), path.with_suffix(".html.part")
+def _try(notebook: Path, parameters: dict[str, object], page: Path, template: str) -> str:
+    executed = page.with_suffix(".ipynb")
     reason = ""
     for _ in range(TRIES):
         try:
-            run_notebook(notebook, working, parameters)
-            export_html(working, page, template, plotly_js="beside")
-            page.replace(path)
-            reason = ""
-            break
+            run_notebook(notebook, executed, parameters)
+            export_html(executed, page, template, plotly_js="beside")
+            return ""
         except ForedeckError as error:
             reason = error.what
         finally:
-            working.unlink(missing_ok=True)
-            page.unlink(missing_ok=True)
+            for left in (executed, executed.with_name(f"{executed.stem}.failed.ipynb")):
+                left.unlink(missing_ok=True)
     return reason
 
 
@@ -145,28 +145,23 @@ def _finish(ledger: Ledger, record: RoundRecord, links: dict[str, str], failed: 
     """All of the pack that is made from the whole round."""
     view = replace(record.view(), links=links)
     formats = settings.pack.formats
-    _copy_plotly(staging, staging / "reports" if links else None)
+    contents = {}
+    if links:
+        put_plotly_beside(staging / "reports")
+    if "workbook" in formats:
+        before = None if view.previous is None else view.previous.adjusted
+        write_workbook(staging / "forecasts.xlsx", view, watch=watch_list(view.tables, before),
+                       cautions=cautions(Frequency(view.frequency)))
+        contents["forecasts.xlsx"] = "Workbook with forecasts, ranges, actuals, findings and adjustments"
+    for path in write_forecasts(staging, view, [f for f in formats if f in ("parquet", "csv")]):
+        contents[path.name] = f"The forecasts as {path.suffix[1:]} for other programs"
     parameters: dict[str, object] = {"ledger": str(ledger.folder), "round": record.name, "links": json.dumps(links),
-                                     "failed": json.dumps(failed)}
+                                     "failed": json.dumps(failed), "contents": json.dumps(contents)}
     reason = _try(notebook_path("pack_cover"), parameters, staging / COVER, "foredeck-cover")
     if reason:
-        raise ForedeckError(f"the cover could not be made: {reason}", where=str(staging),
-                            do=f"foredeck render {record.name}, after mending what it says")
-    if "workbook" in formats:
-        write_workbook(staging / "forecasts.xlsx", view, watch=watch_list(
-            view.tables, None if view.previous is None else view.previous.adjusted))
-    write_forecasts(staging, view, [f for f in formats if f in ("parquet", "csv")])
+        raise ReportError(f"the cover could not be made: {reason}", where=str(staging),
+                          do=f"mend the cause, then: foredeck render {record.name}")
     write_manifest(staging, view, revision=record.revision)
-
-
-def _copy_plotly(*folders: Path | None) -> None:
-    """One copy of plotly.js beside each folder of pages: pages never ask the network."""
-    import plotly
-
-    script = Path(plotly.__file__).parent / "package_data" / "plotly.min.js"
-    for folder in folders:
-        if folder is not None:
-            shutil.copyfile(script, folder / "plotly.min.js")
 
 
 def _is_whole(place: Path, record: RoundRecord) -> bool:
