@@ -14,18 +14,20 @@ from __future__ import annotations
 import sys
 
 import numpy as np
-from checks.clean_series import KINDS, clean_series
 
+from checks.clean_series import KINDS, clean_series
 from foredeck.checks.decomposition import strength, trend_and_season
 from foredeck.checks.expectation import fit
 from foredeck.checks.screening import step_range
 
-SPIKES, STEPS = 0.25, 0.15
-LENGTHS = {1: (12, 16, 24, 36, 60, 120), 4: (12, 16, 24, 36, 60, 120), 12: (12, 18, 23, 24, 30, 36, 48, 60, 84, 120, 240),
+SPIKES, STEPS = 0.40, 0.25
+LENGTHS = {1: (12, 16, 24, 36, 60, 120), 4: (12, 16, 24, 36, 60, 120),
+           12: (12, 18, 23, 24, 30, 36, 48, 60, 84, 120, 240),
            52: (26, 52, 103, 104, 130, 156, 208, 260, 320)}
 
 STRENGTH_LENGTHS = {1: (5, 8, 12, 16, 24, 36, 60, 120), 4: (5, 7, 8, 12, 16, 24, 36, 60, 120),
-                    12: (5, 12, 23, 24, 30, 36, 48, 60, 84, 120, 240), 52: (5, 26, 103, 104, 130, 156, 208, 260, 520)}
+                    12: (5, 12, 23, 24, 30, 36, 48, 60, 84, 120, 240),
+                    52: (5, 26, 103, 104, 130, 156, 208, 260, 520)}
 
 
 def limits(season_length: int, n: int, repeats: int, rng: np.random.Generator) -> tuple[float, float]:
@@ -68,7 +70,10 @@ def print_strengths(repeats: int) -> None:
 
 
 def print_queries(repeats: int) -> None:
-    """Print the table of query limits; with a season fitted, a shorter history never has a lower limit than a longer one."""
+    """Print the table of query limits.
+
+    Once a season is fitted, a shorter history never has a lower limit than a longer one.
+    """
     print("queries")
     for season_length, lengths in LENGTHS.items():
         few = repeats if season_length < 52 else max(repeats // 4, 50)

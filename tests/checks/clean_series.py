@@ -19,7 +19,8 @@ def clean_series(kind: str, n: int, season_length: int, rng: np.random.Generator
     level = np.exp(rng.uniform(np.log(100.0), np.log(5000.0)))
     share = rng.uniform(0.03, 0.20)
     noise = rng.normal(size=n)
-    growth = rng.uniform(max(-0.10, -0.6 / max(years[-1], 1.0)), 0.15)  # never under two fifths of the beginning
+    # Never down to under two fifths of the beginning.
+    growth = rng.uniform(max(-0.10, -0.6 / max(years[-1], 1.0)), 0.15)
     wave = _wave(season_length, rng)[t % season_length] if season_length > 1 else np.zeros(n)
     if kind == "trend":
         return _floored(level * (1.0 + growth * years + share * noise))
@@ -32,12 +33,15 @@ def clean_series(kind: str, n: int, season_length: int, rng: np.random.Generator
     if kind == "season and trend":
         return np.asarray(level * (1.0 + wave) * np.exp(np.log1p(growth) * years + share * noise))
     if kind == "even shares":
-        return _floored(level * (1.0 + wave) * np.maximum(1.0 + growth * years, 0.2) * (1.0 + 0.5 * share * noise))
+        line = np.maximum(1.0 + growth * years, 0.2)
+        return _floored(level * (1.0 + wave) * line * (1.0 + 0.5 * share * noise))
     if kind == "changing season":
-        turning = wave * np.cos(0.15 * years) + _wave(season_length, rng)[t % season_length] * np.sin(0.15 * years)
+        other = _wave(season_length, rng)[t % season_length]
+        turning = wave * np.cos(0.15 * years) + other * np.sin(0.15 * years)
         return _floored(level * (1.0 + turning + share * noise))
     if kind == "wandering level":
-        return np.asarray(level * (1.0 + wave) * np.exp(0.3 * share * np.cumsum(rng.normal(size=n)) + share * noise))
+        walk = np.cumsum(rng.normal(size=n))
+        return np.asarray(level * (1.0 + wave) * np.exp(share * (0.3 * walk + noise)))
     if kind == "random walk":
         return np.asarray(level * np.exp(0.04 * np.cumsum(noise)))
     if kind == "echo":

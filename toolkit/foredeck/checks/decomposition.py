@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import ArrayLike
 from statsmodels.nonparametric.smoothers_lowess import lowess
-from statsmodels.tsa.stl._stl import STL
+from statsmodels.tsa.seasonal import STL
 
 from foredeck.checks.expectation import Array
 from foredeck.checks.limits import strength_limits
@@ -56,9 +56,10 @@ class Decomposition:
     words: str
 
     def _repr_html_(self) -> str:
-        rows = (("Trend", self.trend_strength, self.has_trend), ("Season", self.season_strength, self.has_season))
-        body = "".join(f"<tr><th scope='row'>{name}</th><td>{strength_text(s)}</td><td>{_verdict(s, has)}</td></tr>"
-                       for name, s, has in rows)
+        rows = (("Trend", self.trend_strength, self.has_trend),
+                ("Season", self.season_strength, self.has_season))
+        body = "".join(f"<tr><th scope='row'>{name}</th><td>{strength_text(strong)}</td>"
+                       f"<td>{_verdict(strong, has)}</td></tr>" for name, strong, has in rows)
         return (f"<div><p>{escape(self.words)}</p><table><thead><tr><th scope='col'>Pattern</th>"
                 f"<th scope='col'>Strength, 0 to 1</th><th scope='col'>Told</th></tr></thead>"
                 f"<tbody>{body}</tbody></table></div>")
@@ -119,7 +120,7 @@ def values_of(series_or_values: SeriesHistory | pd.Series[Any] | ArrayLike,
     if isinstance(series_or_values, SeriesHistory):
         return series_or_values.values, season_length or series_or_values.season_length
     values = np.asarray(series_or_values, dtype=np.float64)
-    index = getattr(series_or_values, "index", None)
+    index: Any = getattr(series_or_values, "index", None)
     if season_length is None and hasattr(index, "freqstr"):
         season_length = frequency_of(index).season_length
     if season_length is None or season_length < 1:
@@ -193,6 +194,8 @@ def _words(trend: Array, season_length: int, trend_strength: float, season_stren
         return f"{level}; yearly values have no season."
     if np.isnan(season_strength):
         return f"{level}; with under two full years no season can be told."
+    if not has_season and trend.size < 3 * season_length:
+        return f"{level}; with under three full years no season can be told from noise."
     if not has_season:
         return f"{level}; no season beyond what noise would show (season strength {season_strength:.2f})."
     kind = "a strong" if season_strength > STRONG else "a moderate"

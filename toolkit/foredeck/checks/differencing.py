@@ -94,7 +94,8 @@ def difference(series_or_values: SeriesHistory | pd.Series[Any] | ArrayLike,
     adjusted = np.where(np.isfinite(adjusted), adjusted, parts.trend)
     n = adjusted.size
     if is_intermittent(parts.values):
-        return Differencing(0, 0, _table([]), "Demand is intermittent: differences say nothing here and none is taken.")
+        return Differencing(0, 0, _table([]),
+                            "Demand is intermittent: differences say nothing here and none is taken.")
     if n < max(_FEWEST_SEASONS * length, _FEWEST_PERIODS):
         short = f"under three full years ({n} periods)" if length > 1 else f"only {n} periods"
         return Differencing(None, None, _table([]), f"Cannot tell: with {short} the tests decide nothing.")
@@ -205,9 +206,9 @@ def _times(ordinary: int) -> str:
 
 def _advice(ordinary: int, seasonal: int, length: int) -> str:
     if ordinary == 0 and seasonal == 0:
-        return "No difference is needed: the level holds" + (" and the season is not strong." if length > 1 else ".")
+        season = " and the season is not strong" if length > 1 else ""
+        return f"No difference is needed: the level holds{season}."
     level = ("", "one difference from period to period, because the level does not hold",
              "two differences from period to period, because even the changes do not hold a level")[ordinary]
-    season = "one difference to the same period a year before, because the season is strong" if seasonal else ""
-    text = ", and ".join(t for t in (season, level) if t)
-    return f"Take {text}."
+    parts = ["one difference to the same period a year before, because the season is strong"] * seasonal
+    return f"Take {', and '.join(parts + [level] * (ordinary > 0))}."

@@ -80,7 +80,8 @@ class Pattern:
                 ("Periods per period with demand (ADI)", f"{self.adi:.2f}"),
                 ("Squared variation of demand (CV²)", f"{self.cv2:.2f}"),
                 ("Demand", self.demand_class))
-        body = "".join(f"<tr><th scope='row'>{escape(name)}</th><td>{escape(value)}</td></tr>" for name, value in rows)
+        body = "".join(f"<tr><th scope='row'>{escape(name)}</th><td>{escape(value)}</td></tr>"
+                       for name, value in rows)
         return f"<div><p>{escape(self.words)}</p><table><tbody>{body}</tbody></table></div>"
 
 
@@ -114,11 +115,13 @@ def pattern(values: Array, season_length: int) -> Pattern:
     rare = is_intermittent(parts.values)
     quadrant = demand_class(adi, cv2)
     if rare:
-        often = f"in one period of {adi:.1f}" if np.isfinite(adi) else "never yet"
-        varies = "its size varies much" if quadrant == "lumpy" else "its size varies little"
-        words = f"Demand comes {often} on average and {varies} ({quadrant})."
+        varies = "much" if quadrant == "lumpy" else "little"
+        words = f"Demand comes in one period of {adi:.1f} on average and its size varies {varies} ({quadrant})."
+        if not np.isfinite(adi):
+            words = "There was never any demand."
         # With most periods empty, STL measures when demand happened to come, not a pattern.
-        return Pattern(False, False, True, adi, cv2, quadrant, parts.trend_strength, parts.season_strength, words)
+        return Pattern(False, False, True, adi, cv2, quadrant, parts.trend_strength, parts.season_strength,
+                       words)
     return Pattern(parts.has_trend, parts.has_season, False, adi, cv2, quadrant, parts.trend_strength,
                    parts.season_strength, parts.words)
 

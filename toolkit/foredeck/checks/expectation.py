@@ -36,8 +36,9 @@ _SMALL = 160
 _WANDER = (0.0, 0.02, 0.2, 2.0, 20.0)
 _SEASON = ((0.0, 0.0), (1.0, 0.0), (30.0, 0.0), (30.0, 0.1))
 # A whitened error beyond this many robust deviations counts as exactly this many, so that
-# a few wild values do not choose the model.
-_CLIP = 2.5
+# a few wild values do not choose the model. Further out in a short history, where the robust
+# deviation is itself uncertain: tighter marks there let a season fit noise.
+_CLIP = 3.5
 _NORMAL_MAD = 1.4826
 
 
@@ -95,8 +96,12 @@ class Expectation:
     spread: Array
 
     def expected(self, offset: float = 0.0) -> Array:
-        """What the other periods suggest, in the raw unit; `offset` in standard deviations."""
-        return from_scale(self.z - self.spike + offset * self.spread, self.scale) * self.unit
+        """What the other periods suggest, in the raw unit; `offset` in standard deviations.
+
+        The value itself where the others suggest nothing.
+        """
+        spread = np.where(np.isfinite(self.spread), self.spread, 0.0)
+        return from_scale(self.z - self.spike + offset * spread, self.scale) * self.unit
 
     def distance(self, raw: float, position: int) -> float:
         """Standard deviations between a raw value and what the other periods suggest there."""
@@ -123,7 +128,9 @@ def _candidates(y: Array, kept: NDArray[np.bool_],
                 like: Expectation | None) -> tuple[list[Scale], Array, Array]:
     """Scales the kept values allow, the values on them, and each scale's log Jacobian."""
     lowest = y[kept].min()
-    scales: list[Scale] = ["raw"] if lowest < 0 else ["raw", "root"] if lowest == 0 else ["raw", "root", "log"]
+    scales: list[Scale] = ["raw"]
+    if lowest >= 0:
+        scales = ["raw", "root", "log"] if lowest > 0 else ["raw", "root"]
     if like is not None and like.scale in scales:
         scales = [like.scale]
     z = np.zeros((y.size, len(scales)))
@@ -141,14 +148,13 @@ def _candidates(y: Array, kept: NDArray[np.bool_],
     return scales, z, np.array([jacobian[s] for s in scales])
 
 
-def _robust_squares(errors: Array, free: int) -> Array:
-    """Sum of squares over the first-but-one axis with wild values clipped."""
+def _robust_squares(errors: Array, free: int, clip: float) -> Array:
+    """Sum of squares over the first-but-one axis, wild values clipped at so many robust deviations."""
     size = np.abs(errors)
     mad = np.median(size, axis=-2, keepdims=True) * _NORMAL_MAD * np.sqrt(errors.shape[-2] / free)
     # More than half the errors being nil (rounded counts) leaves the mean size to go by.
     mad = np.where(mad > 1e-9, mad, 1.2533 * size.mean(axis=-2, keepdims=True))
-    clipped: Array = np.minimum(size, _CLIP * mad) ** 2
-    return clipped.sum(axis=-2)
+    return np.asarray((np.minimum(size, clip * mad) ** 2).sum(axis=-2))
 
 
 def fit(values: Array, season_length: int, left_out: NDArray[np.intp],
@@ -199,8 +205,9 @@ def fit(values: Array, season_length: int, left_out: NDArray[np.intp],
     target = white[:, :, 2 + jumps.size:]
     gram = fixed.transpose(0, 2, 1) @ fixed
     errors = target - fixed @ np.linalg.solve(gram, fixed.transpose(0, 2, 1) @ target)
-    squares = np.maximum(_robust_squares(errors, free), 1e-18)
-    merit = jacobian - 0.5 * (logs[first:last, n - 1, None] + np.linalg.slogdet(gram)[1][:, None] + free * np.log(squares))
+    squares = np.maximum(_robust_squares(errors, free, _CLIP * (1.0 + season_length / free)), 1e-18)
+    volume = logs[first:last, n - 1] + np.linalg.slogdet(gram)[1]
+    merit = jacobian - 0.5 * (volume[:, None] + free * np.log(squares))
     best, scale = np.unravel_index(int(np.argmax(merit)), merit.shape)
     return _measure(first + int(best), block[best], fixed[best], errors[best, :, scale], z[:, scale],
                     float(np.sqrt(squares[best, scale] / free)), scales[scale], unit, left_out, jumps)

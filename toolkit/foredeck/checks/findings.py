@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import contextlib
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -48,8 +49,8 @@ class _Place:
     def row(self, position: int, code: str, words: tuple[str, str], raw: float | None = None,
             used: float | None = None) -> dict[str, object]:
         raw = float(self.values[position]) if raw is None else raw
-        return {"series": self.series.name, "period": period_name(self.series.periods[position]), "code": code,
-                "kind": "fault" if code in FAULT_CODES else "query", "raw": raw,
+        return {"series": self.series.name, "period": period_name(self.series.periods[position]),
+                "code": code, "kind": "fault" if code in FAULT_CODES else "query", "raw": raw,
                 "used": float(self.used[position]) if used is None else used, "evidence": words[0],
                 "remedy": words[1], "raw_text": "" if np.isnan(raw) else f"{raw:.10g}"}
 
@@ -87,22 +88,35 @@ def find(series: SeriesHistory, closing: pd.Period, nonnegative: bool = True) ->
     rows = [*read, *_missing_and_signs(place, unread), *_runs(place, nonnegative)]
     rows += [_standout(place, s, closing) for s in screening.standouts]
     rows += _stale(place, closing, unread)
-    table = pd.DataFrame(rows, columns=[*FINDING_COLUMNS, "raw_text"])
-    table = table.astype({"raw": float, "used": float, **dict.fromkeys(("series", "period", "code"), str)})
-    return table.sort_values(["kind", "period"], kind="stable", ignore_index=True)
+    return _table(sorted(rows, key=lambda row: (str(row["kind"]), str(row["period"]))))
+
+
+@lru_cache(maxsize=1)
+def _no_findings() -> pd.DataFrame:
+    columns = [*FINDING_COLUMNS, "raw_text"]
+    return pd.DataFrame({c: pd.Series(dtype=float if c in ("raw", "used") else "str") for c in columns})
+
+
+def _table(rows: list[dict[str, object]]) -> pd.DataFrame:
+    """Rows as a table; most series have none, so that the empty table is made once."""
+    empty = _no_findings()
+    return pd.DataFrame(rows, columns=empty.columns).astype(empty.dtypes.to_dict()) if rows else empty.copy()
 
 
 def _reading_faults(place: _Place) -> list[dict[str, object]]:
     """Faults found while reading, with the value that is used for the period."""
-    position = {period_name(p): i for i, p in enumerate(place.series.periods)}
     rows: list[dict[str, object]] = []
+    if place.series.faults.empty:
+        return rows
+    position = {period_name(p): i for i, p in enumerate(place.series.periods)}
     for fault in place.series.faults.to_dict("records"):
         i = position.get(str(fault["period"]), len(place.used))
         raw = np.nan
         with contextlib.suppress(ValueError):
             raw = float(str(fault["raw"]))
         rows.append({"series": place.series.name, "period": str(fault["period"]), "code": str(fault["code"]),
-                     "kind": "fault", "raw": raw, "used": float(place.used[i]) if i < len(place.used) else np.nan,
+                     "kind": "fault", "raw": raw,
+                     "used": float(place.used[i]) if i < len(place.used) else np.nan,
                      "evidence": str(fault["evidence"]), "remedy": str(fault["remedy"]),
                      "raw_text": str(fault["raw"])})
     return rows
@@ -125,7 +139,7 @@ def _runs(place: _Place, nonnegative: bool) -> list[dict[str, object]]:
     rows = []
     for run in zero_runs(possible, place.series.season_length):
         typical = float(np.nanmedian(np.where(possible == 0.0, np.nan, possible)))
-        words = sentences.zero_run(run, place.when(run.first), place.when(run.last), plural, run.first == 0, typical)
+        words = sentences.zero_run(run, place.when(run.first), place.when(run.last), plural, typical)
         rows.append(place.row(run.first, "zero_run", words))
     for run in constant_runs(possible):
         words = sentences.constant_run(run, place.when(run.first), place.when(run.last), plural)
@@ -140,8 +154,9 @@ def _standout(place: _Place, s: Standout, closing: pd.Period) -> dict[str, objec
     if s.code == "level_shift":
         return place.row(s.position, s.code, sentences.level_shift(s, when, noun))
     closes = place.series.periods[s.position] == closing
-    if closes and s.size < 0 and 0.0 < s.expected and 0.0 <= s.raw < _COMPLETE * s.expected:
-        return place.row(s.position, "incomplete_last_period", sentences.incomplete(s, when, noun, place.seasonal))
+    if closes and s.size < 0 and 0.0 <= s.raw < _COMPLETE * s.expected:
+        words = sentences.incomplete(s, when, noun, place.seasonal)
+        return place.row(s.position, "incomplete_last_period", words)
     if s.code == "change_of_unit":
         return place.row(s.position, s.code, sentences.unit_slip(s, when, noun, place.seasonal, used))
     return place.row(s.position, s.code, sentences.outlier(s, when, noun, plural, place.seasonal, used))
@@ -152,6 +167,8 @@ def _stale(place: _Place, closing: pd.Period, unread: set[str]) -> list[dict[str
     if place.values.size == 0:
         return []
     last = place.series.periods[place.values.size - 1]
+    if last >= closing:
+        return []
     missing = [p for p in pd.period_range(last + 1, closing) if period_name(p) not in unread]
     if not missing:
         return []

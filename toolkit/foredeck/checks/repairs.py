@@ -114,6 +114,8 @@ def _fills(values: Array, season_length: int, screening: Screening) -> Array:
     if is_intermittent(values):
         # A fraction between a zero and a demand would be a demand of a size that never comes.
         return np.full_like(values, np.median(values[known]))
+    line = np.interp(np.arange(values.size), known, values[known])
     if screening.judged and values.size >= 2 * season_length:
-        return screening.expected
-    return np.interp(np.arange(values.size), known, values[known])
+        # Of a long history one piece may be judged and another not.
+        return np.where(np.isfinite(screening.expected), screening.expected, line)
+    return line

@@ -48,22 +48,24 @@ def zero_runs(values: Array, season_length: int) -> list[Run]:
     -------
     list of Run, by position
     """
-    found = []
-    for run in _equal_runs(values):
-        if run.value != 0.0 or run.length < 2:
-            continue
-        outside = np.isfinite(values)
+    found: list[Run] = []
+    runs = [run for run in _equal_runs(values) if run.value == 0.0]
+    outside = np.isfinite(values)
+    # The longest first, so that it does not make the zeros of a shorter one look usual.
+    for run in sorted(runs, key=lambda r: -r.length):
         outside[run.first:run.last + 1] = False
         others = values[outside]
         if others.size < _FEWEST_OTHERS or is_intermittent(others):
-            continue
+            break
         base = (np.count_nonzero(others == 0.0) + 0.5) / (others.size + 1.0)
         chance = 1.0
         for p in range(run.first, run.last + 1):
             chance *= max(base, _zero_then(values, outside, p, season_length))
         if chance <= _CHANCE:
             found.append(run)
-    return found
+        else:
+            outside[run.first:run.last + 1] = True
+    return sorted(found, key=lambda r: r.first)
 
 
 def _zero_then(values: Array, outside: NDArray[np.bool_], p: int, season_length: int) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from itertools import pairwise
 from typing import Literal
 
 import numpy as np
@@ -119,21 +120,22 @@ def screen(values: Array, season_length: int) -> Screening:
         return _screen_in_pieces(values, season_length)
     known = np.isfinite(values)
     nothing = Screening((), np.array(values), judged=False)
-    if is_intermittent(values) or known.sum() < FEWEST_PERIODS and n < 2 * season_length:
+    if is_intermittent(values) or (known.sum() < FEWEST_PERIODS and n < 2 * season_length):
         return nothing
-    found, model = _search(values, season_length)
+    found, model = _search(values, season_length, _Found())
     if model is None:
         return nothing
     slips = _unit_slips(values, found, model)
+    taken = {slip.position for slip in slips}
     if slips:
         mended = np.array(values)
         for slip in slips:
             mended[slip.position] /= slip.factor
-        found, second = _search(mended, season_length)
+        found, second = _search(mended, season_length,
+                                _Found([p for p in found.spikes if p not in taken], found.steps))
         if second is not None:
             model = second
             slips = [_measured_again(slip, model) for slip in slips]
-    taken = {slip.position for slip in slips}
     rest = [_odd_value(p, values, model) for p in found.spikes if p not in taken]
     rest += [_jump(p, values, model) for p in found.steps]
     expected = np.where(np.isfinite(model.spread), model.expected(), values)
@@ -149,19 +151,19 @@ def _screen_in_pieces(values: Array, season_length: int) -> Screening:
         start = max(0, end - LONGEST)
         piece = screen(values[start:max(end, LONGEST)], season_length)
         expected[start:end] = piece.expected[:end - start]
-        standouts += [replace(s, position=s.position + start) for s in piece.standouts if s.position + start < end]
+        standouts += [replace(s, position=s.position + start) for s in piece.standouts
+                      if s.position + start < end]
         judged |= piece.judged
         end = start
     return Screening(tuple(sorted(standouts, key=lambda s: s.position)), expected, judged)
 
 
-def _search(values: Array, season_length: int) -> tuple[_Found, Expectation | None]:
+def _search(values: Array, season_length: int, found: _Found) -> tuple[_Found, Expectation | None]:
     """Find spikes and steps, choosing the model anew with what was found until both settle."""
     missing = np.flatnonzero(~np.isfinite(values))
     limits = query_limits(season_length, values.size - missing.size)
     judging = values.size - missing.size >= FEWEST_PERIODS
     most = max(2, values.size // 8) if judging else 0
-    found = _Found()
     model = _fit(values, season_length, missing, found)
     for _ in range(_ROUNDS):
         start = model
@@ -203,6 +205,9 @@ def _add(found: _Found, model: Expectation, limits: tuple[float, float], missing
     step = np.zeros(n)
     allowed = step_range(n)
     step[allowed] = np.abs(model.step_t[allowed]) / limits[1]
+    # A jump begins with a period that speaks: one earlier would look exactly the same.
+    step[missing] = 0.0
+    step[found.spikes] = 0.0
     for known in found.steps:
         step[max(0, known - _SHORTEST_STRETCH + 1):known + _SHORTEST_STRETCH] = 0.0
     a, b = int(np.argmax(spike)), int(np.argmax(step))
@@ -223,9 +228,9 @@ def _jump(p: int, values: Array, model: Expectation) -> Standout:
     after, before = _levels(p, model)
     factor = after / before if before > 0 and after > 0 else 1.0
     k = _power_of_ten(factor)
-    return Standout(p, "change_of_unit" if k else "level_shift", float(values[p]), before, *_expected_at(p, model)[1:],
-                    10.0 ** k if k else factor, float(model.step_t[p]), lasting=True,
-                    level=after)
+    _, low, high = _expected_at(p, model)
+    return Standout(p, "change_of_unit" if k else "level_shift", float(values[p]), before, low, high,
+                    10.0 ** k if k else factor, float(model.step_t[p]), lasting=True, level=after)
 
 
 def _expected_at(p: int, model: Expectation) -> tuple[float, float, float]:
@@ -258,11 +263,10 @@ def _unit_slips(values: Array, found: _Found, model: Expectation) -> list[Stando
                                   float(model.spike_t[p])))
     steps = sorted(found.steps)
     powers = [_power_of_ten(_jump(p, values, model).factor) for p in steps]
-    for (begin, k), (end, back) in zip(zip(steps, powers, strict=True), zip(steps[1:], powers[1:], strict=True),
-                                       strict=False):
+    for (begin, k), (end, back) in pairwise(zip(steps, powers, strict=True)):
         if k and back == -k:
-            slips += [Standout(p, "change_of_unit", float(values[p]), float(values[p]) / 10.0 ** k, np.nan, np.nan,
-                               10.0 ** k, float(model.step_t[begin]))
+            slips += [Standout(p, "change_of_unit", float(values[p]), float(values[p]) / 10.0 ** k, np.nan,
+                               np.nan, 10.0 ** k, float(model.step_t[begin]))
                       for p in range(begin, end) if np.isfinite(values[p])]
     return slips
 
