@@ -309,8 +309,9 @@ def smooth(
     Examples
     --------
     >>> import numpy as np
-    >>> smooth(np.array([27.0, 34, 31, 24, 18, 19]), "ses", alpha=0.2).forecast(2).round(2)
-    array([25.07, 25.07])
+    >>> complaints = np.array([27.0, 34, 31, 24, 18, 19])
+    >>> smooth(complaints, "ses", alpha=0.2, initial="first value").forecast(2).round(2)
+    array([24.56, 24.56])
     """
     values, m = bare_values(series, season_length, nonnegative)
     entry = named(method)
