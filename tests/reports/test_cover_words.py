@@ -10,20 +10,18 @@ import pytest
 
 from foredeck.reports.cover_facts import cover_facts
 from foredeck.reports.cover_words import answers, headline, moves, turned_out_sentences
-from sample_round import HOSTILE, NOT_FORECAST, SEASONAL, TREND, sample_view
+from foredeck.review.changes import changes
+from sample_round import HOSTILE, NEWCOMER, NOT_FORECAST, SEASONAL, TREND, sample_view
 
 WATCH = pd.DataFrame({"rank": [2, 1], "series": [HOSTILE, SEASONAL], "value_at_stake": [120.0, 1900.0],
                       "reasons": ["x", "October came to 359, below the range."],
                       "ask": ["y", "Was stock short?"]})
 NOBODY = WATCH.iloc[:0]
-UNMOVED = pd.DataFrame(columns=["series", "period", "before", "now", "change", "because"])
+UNMOVED = changes(sample_view().tables["adjusted"], None)
 
 
 def changes_of(view):
-    now = view.tables["adjusted"][["series", "period", "adjusted"]].rename(columns={"adjusted": "now"})
-    old = view.previous.adjusted[["series", "period", "adjusted"]].rename(columns={"adjusted": "before"})
-    table = now.merge(old, on=["series", "period"])
-    return table.assign(change=table["now"] - table["before"], because="new actuals")
+    return changes(view.tables["adjusted"], view.previous.adjusted)
 
 
 def with_table(view, **tables):
@@ -103,12 +101,41 @@ def test_series_without_forecast_are_listed_once_with_their_reason():
 
 def test_the_headline_says_how_many_and_against_what():
     assert headline(cover_facts(sample_view())) == (
-        "November should bring about 2,080 cases: 50 more than last round said.")
+        "November should bring about 2,080 cases: like for like 8% more than last year, and 50 more than last "
+        "round said.")
     assert headline(cover_facts(sample_view(previous=False))) == (
-        "November should bring about 2,080 cases in all 5 series.")
+        "November should bring about 2,080 cases: like for like 8% more than last year.")
     assert headline(cover_facts(sample_view(frequency="quarterly"))) == (
         "The fourth quarter should bring about 1,880 cases: 3% more than last year, and 50 more than last "
         "round said.")
+
+
+def test_without_last_year_and_last_round_the_headline_counts_the_series():
+    view = sample_view(previous=False)
+    actuals = view.tables["actuals"]
+    totals = view.tables["totals"].assign(last_year=np.nan)
+    blank = with_table(view, totals=totals, actuals=actuals[actuals["period"] != "2025-11"])
+    assert headline(cover_facts(blank)) == "November should bring about 2,080 cases in all 5 series."
+
+
+def test_a_newcomer_is_left_out_of_both_sides_of_the_comparison_with_last_year():
+    """The newcomer (87 of 2,083) has no actual of last year: 1,996 is held against 1,845, not 2,083."""
+    view = sample_view()
+    total = cover_facts(view).overall
+    now = view.tables["adjusted"].query("period == '2026-11'").set_index("series")["adjusted"]
+    past = view.tables["actuals"].query("period == '2025-11'").set_index("series")["raw"]
+    assert NEWCOMER not in past.index
+    assert (total.without, total.last_year) == (1, past.sum())
+    assert total.alike == pytest.approx(now.sum() - now[NEWCOMER], rel=1e-12)
+    assert total.against == pytest.approx(total.alike / past.sum() - 1, rel=1e-12)
+    whole = next(each for each in cover_facts(view).totals if each.member == "north")
+    assert (whole.without, whole.against) == (0, whole.ahead.value / whole.last_year - 1)
+
+
+def test_where_most_of_a_total_is_new_it_is_not_compared():
+    river = next(each for each in cover_facts(sample_view()).totals if each.member == "hand_tools")
+    assert np.isnan(river.against)
+    assert river.without == 0
 
 
 def test_the_changes_told_are_differences_of_the_figures_shown():
@@ -125,7 +152,8 @@ def test_the_four_answers_of_a_round_with_a_past():
     many, changed, came, needs = answers(cover_facts(view), WATCH, changes_of(view))
     assert (many.question, many.big, many.small) == ("How many in November?", "2,080", "cases")
     assert many.expected
-    assert (many.lead, many.text) == ("Nine in ten: 1,940 to 2,240.", "There is no total for November 2025.")
+    assert (many.lead, many.text) == ("Nine in ten: 1,940 to 2,240.", "November 2025 was 1,845 without one "
+                                       "series that has no actual of it.")
     assert (changed.lead, changed.text) == (
         f"{SEASONAL} up 60;", f"{HOSTILE} down 10. An adjustment in one series adds 40.")
     assert (came.question, came.big, came.small) == ("How did October turn out?", "5 of 5", "in range")
@@ -137,7 +165,7 @@ def test_the_four_answers_of_a_first_round_claim_no_past():
     many, changed, came, needs = answers(cover_facts(sample_view(previous=False)), NOBODY, UNMOVED)
     assert many.big == "2,080"
     assert (changed.big, changed.text) == ("First round", "There is no earlier round to compare with.")
-    assert came.small == "would have been in range"
+    assert came.lead == "Would have been inside their ranges, as nine in ten promises."
     assert "would have been forecast" in came.text
     assert (needs.big, needs.text) == ("None", "No series stands out in this round.")
 
@@ -187,7 +215,8 @@ def test_moves_are_ordered_and_lose_what_rounding_hides():
     facts = cover_facts(view)
     table = changes_of(view)
     shown = moves(facts, table)
-    assert shown["series"].tolist()[0] == SEASONAL
+    first = shown.iloc[0]
+    assert (first["series"], first["because"]) == (SEASONAL, "October came above what was said; adjustment +40")
     assert shown["change"].is_monotonic_decreasing
     assert (shown["change"] != 0).all()
     tiny = table.assign(before=table["now"] - 0.001)

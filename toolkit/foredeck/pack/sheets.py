@@ -10,7 +10,7 @@ from dataclasses import dataclass
 
 import pandas as pd
 
-from foredeck.reports.cover_facts import silent_series
+from foredeck.reports.cover_facts import group_columns, silent_series
 from foredeck.study import RoundView
 
 
@@ -34,12 +34,6 @@ class Sheet:
     table: pd.DataFrame
     keys: int = 1
     shares: Sequence[str] = ()
-
-
-def group_columns(series: pd.DataFrame) -> list[str]:
-    """Names of the group columns: those between `series` and `unit` in the round's series table."""
-    columns = list(series.columns)
-    return columns[columns.index("series") + 1:columns.index("unit")]
 
 
 def range_columns(levels: Sequence[int]) -> list[str]:

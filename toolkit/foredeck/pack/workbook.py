@@ -18,6 +18,7 @@ import pandas as pd
 import xlsxwriter
 
 from foredeck.pack.sheets import Sheet, sheets
+from foredeck.reports.cover_record import cautions as standard_cautions
 from foredeck.study import RoundView
 
 MOST_ROWS = 1_048_575
@@ -29,7 +30,8 @@ _CUT = " [cut]"
 _INK, _RULE = "#1B2230", "#6B7280"
 
 
-def write_workbook(path: Path, view: RoundView, *, watch: pd.DataFrame, cautions: Sequence[str] = ()) -> Path:
+def write_workbook(path: Path, view: RoundView, *, watch: pd.DataFrame,
+                   cautions: Sequence[str] | None = None) -> Path:
     """Write the workbook of a round.
 
     The same round gives the same bytes: the creation date is that of the round, not of the writing.
@@ -42,8 +44,8 @@ def write_workbook(path: Path, view: RoundView, *, watch: pd.DataFrame, cautions
         The round. Missing numbers become empty cells.
     watch : DataFrame
         The watch list, columns `rank`, `series`, `value_at_stake`, `reasons`, `ask`.
-    cautions : sequence of str
-        Sentences for the sheet About.
+    cautions : sequence of str, optional
+        Sentences for the sheet About; those that every pack carries when not given.
 
     Returns
     -------
@@ -56,7 +58,8 @@ def write_workbook(path: Path, view: RoundView, *, watch: pd.DataFrame, cautions
         book.set_properties({"title": _text(view.title)[:255], "subject": f"Round {view.round}, {view.state}",
                              "created": _made_at(view)})
         formats = _Formats(book)
-        for sheet in sheets(view, watch, cautions):
+        warnings = standard_cautions(view.frequency) if cautions is None else cautions
+        for sheet in sheets(view, watch, warnings):
             for number, part in enumerate(_parts(sheet.table), start=1):
                 name = sheet.name if number == 1 else f"{sheet.name} {number}"
                 _write_sheet(book, formats, name, sheet, part, f"Round {view.round}, {view.state}")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 
@@ -9,6 +10,7 @@ import numpy as np
 import pandas as pd
 
 from foredeck.periods import Frequency, parse_period, period_name
+from foredeck.review.last_time import SAID_BY_ROUND, last_time
 from foredeck.study import RoundView
 from foredeck.wording.facts import NAN, Said, said
 from foredeck.wording.numbers import Rounding
@@ -22,7 +24,8 @@ class Total:
     """One total of the next period: all series, or one member of a group.
 
     `last_year` is the total a year before, `previous` what the last round said of the same period; both NaN
-    where there is none.
+    where there is none. Where some members have no actual of last year, `last_year` is that of the others,
+    `without` counts those left out and `alike` is the forecast of the others: compared is like with like.
     """
 
     scope: str
@@ -31,11 +34,18 @@ class Total:
     last_year: float
     previous: float
     figures: Rounding
+    alike: float = NAN
+    without: int = 0
 
     @property
     def against(self) -> float:
         """The forecast against last year as a share of it; NaN where last year is not known or nothing."""
-        return self.ahead.value / self.last_year - 1 if self.last_year > 0 else NAN
+        return self.alike / self.last_year - 1 if self.last_year > 0 else NAN
+
+    @property
+    def level_of_last_year(self) -> float:
+        """Last year scaled up to the whole total where some of it is missing, for drawing against."""
+        return self.last_year * self.ahead.value / self.alike if self.alike > 0 else NAN
 
     @property
     def change(self) -> float:
@@ -137,18 +147,25 @@ def cover_facts(view: RoundView) -> CoverFacts:
     tried = _tried(view, outer)
     changes = adjusted.loc[(adjusted["period"] == next_period) & (adjusted["adjustment"] != 0), "adjustment"]
     whole = _whole(view.tables["actuals"])
+    following = _next(view, next_period, last_year, outer, whole)
     return CoverFacts(
         round=view.round, state=view.state, closing=view.closing, frequency=frequency,
         unit=str(units[0]) if len(units) == 1 else "", valued=bool(series["unit_value"].notna().any()),
         outer=outer, inner=inner, n_series=len(series), next_period=next_period, last_year_period=last_year,
-        totals=_totals(view, next_period, outer, inner, bool(whole.all())) if len(units) == 1 else (),
+        totals=_totals(view, following, next_period, outer, inner, bool(whole.all())) if len(units) == 1 else (),
         previous_round="" if view.previous is None else view.previous.round,
         added=len(said_now - said_before) if said_before else 0, dropped=len(said_before - said_now),
         turned_out=_turned_out(view, outer), tried=len(tried), tried_inside=int(tried["inside"].sum()),
         tried_periods=int(tried["period"].nunique()),
-        next=_next(view, next_period, last_year, outer, whole), silent=silent_series(view),
+        next=following, silent=silent_series(view),
         adjusted_series=len(changes), adjusted_by=float(changes.sum()),
     )
+
+
+def group_columns(series: pd.DataFrame) -> list[str]:
+    """Names of the group columns: those between `series` and `unit` in the round's series table."""
+    columns = list(series.columns)
+    return columns[columns.index("series") + 1:columns.index("unit")]
 
 
 def members_of(series: pd.DataFrame, scope: str, member: str) -> list[str]:
@@ -157,7 +174,11 @@ def members_of(series: pd.DataFrame, scope: str, member: str) -> list[str]:
     return [str(name) for name in chosen["series"]]
 
 
-def _totals(view: RoundView, next_period: str, outer: int, inner: int | None,
+LIKE = 0.5
+"""Part of a total's forecast that must have an actual of last year for the two to be compared."""
+
+
+def _totals(view: RoundView, following: pd.DataFrame, next_period: str, outer: int, inner: int | None,
             whole: bool) -> tuple[Total, ...]:
     table = view.tables["totals"]
     rows = table[(table["window"] == next_period) & (table["scope"] != "series")]
@@ -171,32 +192,38 @@ def _totals(view: RoundView, next_period: str, outer: int, inner: int | None,
     for _, row in rows.iterrows():
         scope, member = str(row["scope"]), str(row["member"])
         ahead = said(row, "adjusted", outer, inner)
-        earlier = [before[name] for name in members_of(series, scope, member) if name in before]
-        found.append(Total(
-            scope, member, ahead, float(row["last_year"]), float(np.sum(earlier)) if earlier else NAN,
-            Rounding.supported_by(ahead.upper - ahead.lower, ahead.value, whole and abs(ahead.value) >= 10)))
+        members = members_of(series, scope, member)
+        earlier = [before[name] for name in members if name in before]
+        figures = Rounding.supported_by(ahead.upper - ahead.lower, ahead.value,
+                                        whole and abs(ahead.value) >= 10)
+        last_year, alike, without = _like_for_like(following[following.index.isin(members)], ahead.value,
+                                                   float(row["last_year"]))
+        found.append(Total(scope, member, ahead, last_year, float(np.sum(earlier)) if earlier else NAN, figures,
+                           alike, without))
     return tuple(sorted(found, key=lambda total: total.scope != "all"))
 
 
+def _like_for_like(members: pd.DataFrame, value: float, last_year: float) -> tuple[float, float, int]:
+    """Last year's total, the forecast to hold against it, and how many series were left out of both."""
+    if math.isfinite(last_year):
+        return last_year, value, 0
+    known = members.dropna(subset=["last_year"])
+    alike = float(known["value"].sum())
+    if known.empty or alike < LIKE * value:
+        return NAN, NAN, 0
+    return float(known["last_year"].sum()), alike, len(members) - len(known)
+
+
 def _turned_out(view: RoundView, outer: int) -> TurnedOut:
-    actuals = view.tables["actuals"]
-    known = actuals.loc[actuals["period"] == view.closing, ["series", "raw"]].dropna()
-    tried = view.tables["reliability"]
-    rows = tried[(tried["period"] == view.closing) & (tried["lead"] == 1)]
-    rows = rows.rename(columns={"forecast": "said"})
-    by_round = False
-    if view.previous is not None:
-        old = view.previous.adjusted
-        of_round = old[old["period"] == view.closing].rename(columns={"adjusted": "said"})
-        if len(of_round):
-            rows, by_round = of_round, True
-    edges = {f"lower_{outer}": "lower", f"upper_{outer}": "upper"}
-    table = known.rename(columns={"raw": "actual"}).merge(
-        rows[["series", "lead", "said", *edges]].rename(columns=edges).dropna(), on="series")
-    where = np.select([table["actual"] < table["lower"], table["actual"] > table["upper"]],
-                      ["below", "above"], "inside")
+    previous = None if view.previous is None else view.previous.adjusted
+    table = last_time(view.closing, view.tables["actuals"], view.tables["reliability"], previous, outer)
+    by_round = bool((table["said_by"] == SAID_BY_ROUND).any())
+    # What the round really said and what the backtest would have said are not counted together.
+    told = (table["said_by"] == SAID_BY_ROUND) if by_round else table["said"].notna()
+    table = table[told & (table["where_it_fell"] != "no actual")].dropna(subset=["said", "lower", "upper"])
+    table = table.rename(columns={"where_it_fell": "where"}).reset_index(drop=True)
     lead = int(table["lead"].max()) if len(table) else 0
-    return TurnedOut(table.drop(columns="lead").assign(where=where), by_round, lead)
+    return TurnedOut(table[["series", "actual", "said", "lower", "upper", "where"]], by_round, lead)
 
 
 def _tried(view: RoundView, outer: int) -> pd.DataFrame:

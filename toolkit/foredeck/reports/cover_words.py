@@ -43,7 +43,8 @@ def _against_last_year(total: Total) -> str:
     if not math.isfinite(total.against):
         return ""
     way = _way(round(100 * total.against))
-    return say(f"headline year {way}", share=percent(abs(total.against)))
+    like = say("headline like") if total.without else ""
+    return say(f"headline year {way}", share=percent(abs(total.against)), like=like)
 
 
 def _against_last_round(total: Total, follows: bool) -> str:
@@ -74,7 +75,7 @@ def answers(facts: CoverFacts, watch: pd.DataFrame, changes: pd.DataFrame) -> li
     watch : DataFrame
         Columns `rank`, `series`, `value_at_stake`, `reasons`, `ask`.
     changes : DataFrame
-        Columns `series`, `period`, `before`, `now`, `change`, `because`.
+        As for `moves`.
     """
     return [_how_many(facts), _what_changed(facts, changes), _how_turned_out(facts), _needs(watch)]
 
@@ -88,13 +89,16 @@ def _how_many(facts: CoverFacts) -> Answer:
         of = say("how many of", count=plain(count), all=plain(facts.n_series))
         return Answer(say("how many series"), of, say("how many of small"), "", say("how many units"))
     past = long_name(facts.last_year_period, facts.frequency)
-    known = math.isfinite(total.last_year)
+    last_year = say("how many no year", past=past)
+    if math.isfinite(total.last_year):
+        told = {"past": upper_first(past), "value": plain(total.last_year)}
+        last_year = one_or_many("how many like", total.without, **told) if total.without else say(
+            "how many year", **told)
     return Answer(
         say("how many", when=when), total.figures.text(total.ahead.value), facts.unit,
         say("how many lead", level=upper_first(level_name(facts.outer)),
             lower=total.figures.text(total.ahead.lower), upper=total.figures.text(total.ahead.upper)),
-        say("how many year" if known else "how many no year", past=upper_first(past) if known else past,
-            value=plain(total.last_year)), expected=True)
+        last_year, expected=True)
 
 
 def _what_changed(facts: CoverFacts, changes: pd.DataFrame) -> Answer:
@@ -131,17 +135,43 @@ def _adjusted(facts: CoverFacts) -> list[str]:
 def moves(facts: CoverFacts, changes: pd.DataFrame) -> pd.DataFrame:
     """Moves of the next period that show after rounding, largest rise first.
 
+    Parameters
+    ----------
+    facts : CoverFacts
+    changes : DataFrame
+        Columns `series`, `period`, `before`, `now`, `from_baseline`, `from_adjustment`.
+
     Returns
     -------
     DataFrame
-        `series`, `before`, `now`, `change` (between the rounded figures), `because`.
+        `series`, `before`, `now`, `change` (between the rounded figures), `because` (words).
     """
     rows = changes[(changes["period"] == facts.next_period)].dropna(subset=["before", "now"])
     shown = [facts.figures(str(name)).nice(now) - facts.figures(str(name)).nice(before)
              for name, before, now in zip(rows["series"], rows["before"], rows["now"], strict=True)]
     change = pd.Series(shown, rows.index, dtype=float)
-    rows = rows[["series", "before", "now", "because"]].assign(change=change)[change != 0]
+    rows = rows.assign(change=change)[change != 0]
+    came = facts.turned_out.table.set_index("series")
+    surprise = came["actual"] - came["said"]
+    because = [_because(facts, str(name), float(surprise.get(name, math.nan)), baseline, adjustment)
+               for name, baseline, adjustment
+               in zip(rows["series"], rows["from_baseline"], rows["from_adjustment"], strict=True)]
+    rows = rows.assign(because=pd.Series(because, rows.index, dtype=object))
+    rows = rows[["series", "before", "now", "change", "because"]]
     return rows.sort_values(["change", "series"], ascending=[False, True], ignore_index=True)
+
+
+def _because(facts: CoverFacts, series: str, surprise: float, baseline: float, adjustment: float) -> str:
+    """What moved a figure: the newest actual where it points the same way, and the adjustment."""
+    figures, parts = facts.figures(series), []
+    if figures.nice(baseline) != 0 or figures.nice(adjustment) == 0:
+        side = "above" if baseline > 0 else "below"
+        same_way = surprise * baseline > 0 and facts.turned_out.by_round
+        when = upper_first(near_name(facts.closing, facts.frequency))
+        parts.append(say(f"because {side}", when=when) if same_way else say("because again"))
+    if figures.nice(adjustment) != 0:
+        parts.append(say("because adjusted", size=signed(adjustment, figures.decimals)))
+    return upper_first("; ".join(parts))
 
 
 def _how_turned_out(facts: CoverFacts) -> Answer:
@@ -151,7 +181,7 @@ def _how_turned_out(facts: CoverFacts) -> Answer:
         text = say("turned none text", when=when)
         return Answer(say("turned out", when=when), say("turned none"), "", "", text)
     kind, size, _ = _against_expected(came.inside, n, facts.outer)
-    lead = say(f"turned {kind}", size=size, level=level_name(facts.outer))
+    lead = say(f"turned {'' if came.by_round else 'would '}{kind}", size=size, level=level_name(facts.outer))
     text = ""
     if facts.overall is not None:
         actual, expected = float(came.table["actual"].sum()), float(came.table["said"].sum())
@@ -160,7 +190,7 @@ def _how_turned_out(facts: CoverFacts) -> Answer:
         text = say("turned all" if came.by_round else "turned all would", share=share,
                    actual=plain(actual, figures.decimals), said=figures.text(expected))
     return Answer(say("turned out", when=when), say("turned big", inside=plain(came.inside), n=plain(n)),
-                  say("turned small" if came.by_round else "turned small would"), lead, text)
+                  say("turned small"), lead, text)
 
 
 def _against_expected(inside: int, n: int, level: int) -> tuple[str, str, str]:
