@@ -145,7 +145,7 @@ ROWS = st.lists(st.builds(
     reason=st.uuids().map(str)), min_size=2, max_size=7)
 
 
-@settings(max_examples=40, deadline=None)
+@settings(max_examples=20, deadline=None)
 @given(rows=ROWS, turn=st.randoms(use_true_random=False))
 def test_the_order_of_the_rows_never_matters_and_the_listed_parts_add_up(rows, turn):
     other = list(rows)
