@@ -171,7 +171,7 @@ ALLOWED_SCOPE = "the name of a series, a group such as depot=north, or all"
      "did you mean 'north/pots'?"),
     (adjustment("'; DROP", "amount", 1), "there is no series \"'; DROP\"", ALLOWED_SCOPE,
      "correct the scope"),
-    (adjustment("depo=north", "amount", 1), "there is no group column 'depo'", "depot, family, unit, status",
+    (adjustment("depo=north", "amount", 1), "there is no group column 'depo'", "depot, family",
      "did you mean 'depot'?"),
     (adjustment("depot=nroth", "amount", 1), "no series has depot 'nroth'", "north, river, west",
      "did you mean 'north'?"),

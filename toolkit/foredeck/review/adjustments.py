@@ -49,7 +49,8 @@ def apply_adjustments(forecasts: pd.DataFrame, series_table: pd.DataFrame, rows:
     forecasts : DataFrame[series, period, lead, baseline, lower_.., upper_..]
         The baseline and its ranges; the unit of each series.
     series_table : DataFrame[series, <group columns>, ...]
-        Every series of the round; its text columns are the groups that a scope may name.
+        Every series of the round; the columns between series and unit are the groups that
+        a scope may name.
     rows : DataFrame
         As `read_adjustments` gives them; made by hand, they are checked in the same way.
     nonnegative : bool
@@ -111,9 +112,8 @@ class _Reach:
 
     def __post_init__(self) -> None:
         self.known = [str(name) for name in self.series_table["series"]]
-        texts = [name for name in self.series_table.columns if name != "series"
-                 and pd.api.types.infer_dtype(self.series_table[name], skipna=True) == "string"]
-        self.groups = {str(name): self.series_table[name] for name in texts}
+        columns = [str(name) for name in self.series_table.columns]
+        self.groups = {name: self.series_table[name] for name in columns[1:columns.index("unit")]}
         self.periods = self.forecasts["period"].astype(str).to_numpy(dtype=object)
         self.of_series = self.forecasts.groupby("series", sort=False).indices
 
