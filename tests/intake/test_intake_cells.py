@@ -3,6 +3,7 @@ import math
 
 import openpyxl
 import pytest
+import xlsxwriter
 
 from foredeck.errors import IntakeError
 from foredeck.intake.cells import encode, read_cells, text_of
@@ -161,6 +162,18 @@ def test_the_first_sheet_is_taken_and_said_or_the_one_asked_for(workbook):
     assert workbook(sheets).format == "Excel, the first of 2 sheets"
     assert workbook(sheets).header == ["a"]
     assert workbook(sheets, sheet="two").header == ["b"]
+
+
+def test_errors_of_excel_are_cells_with_their_text_and_not_blank(tmp_path):
+    book = xlsxwriter.Workbook(tmp_path / "a.xlsx")
+    book.add_worksheet("first").write_formula("A1", "=1/0", None, "#N/A")
+    sheet = book.add_worksheet("a & b")
+    sheet.write_row("Z1", ["x", "y"])
+    sheet.write_row("Z2", ["a", 1])
+    sheet.write_formula("AA3", "=1/0", None, "#DIV/0!")
+    book.close()
+    cells = read_cells(tmp_path / "a.xlsx", sheet="a & b")
+    assert [list(column) for column in cells.columns[25:]] == [["a", ""], [1.0, "#DIV/0!"]]
 
 
 def test_an_unknown_sheet_is_refused_with_the_sheets_there_are(workbook, tmp_path):

@@ -231,3 +231,24 @@ def test_a_file_without_one_number_is_refused(tmp_path):
         "  where: a.csv line 2, column cases\n"
         "  allowed: a number in at least one cell\n"
         "  next: check which column holds the values")
+
+
+def test_damaged_files_are_read_or_refused_with_an_error_of_ours(tmp_path):
+    rng = np.random.default_rng(11)
+    whole = "series,month,cases\n" + "".join(
+        f'"{name}",2024-{m:02d},{m}.5\n' for name in ("x", "y z", "007") for m in range(1, 13))
+    bits = [b"\n", b"\r", b'"', b",", b";", b"\0", b"\xff", b"-", b"9", b"/", b" ", b"e", b"n/a", b"\xd9\xa3", b""]
+    outcomes = []
+    for _ in range(300):
+        damaged = bytearray(whole.encode())
+        for at in rng.integers(len(damaged), size=rng.integers(1, 4)):
+            damaged[at:at + int(rng.integers(0, 3))] = bits[rng.integers(len(bits))]
+        (tmp_path / "a.csv").write_bytes(bytes(damaged))
+        try:
+            history = fd.read(tmp_path / "a.csv", **LONG)
+        except IntakeError:
+            outcomes.append("refused")
+        else:
+            outcomes.append("read")
+            assert np.isfinite(history.actuals["value"]).sum() > 0
+    assert set(outcomes) == {"read", "refused"}

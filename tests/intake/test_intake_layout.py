@@ -152,10 +152,13 @@ def test_a_wide_workbook_with_real_dates_as_headings_names_its_cells(tmp_path):
     book.active.title = "cases"
     book.active.append(["code", dt.datetime(2024, 1, 31), dt.datetime(2024, 2, 29), dt.datetime(2024, 3, 31)])
     book.active.append(["a", 1, None, 3])
-    book.active.append(["b", None, "=1+1", 2])
+    book.active.append(["b", 5, "#DIV/0!", 2])
     book.save(tmp_path / "a.xlsx")
-    history = fd.read(tmp_path / "a.xlsx", series="code", layout="wide")
+    history = fd.read(tmp_path / "a.xlsx", series="code", layout="wide", gaps="zero")
     assert history.understood.lines()[:2] == [
         "a.xlsx sheet 'cases': Excel, wide layout, 2 rows read",
         "dates written as date cells; monthly, 2024-01 to 2024-03"]
-    np.testing.assert_array_equal(history["a"].values, [1, np.nan, 3])
+    np.testing.assert_array_equal(history["a"].values, [1, 0, 3])
+    np.testing.assert_array_equal(history["b"].values, [5, np.nan, 2])
+    assert history.faults[["raw", "where"]].to_numpy().tolist() == [
+        ["#DIV/0!", "a.xlsx sheet 'cases' row 3, column 2024-02-29"]]

@@ -10,16 +10,23 @@ import csv
 import datetime as dt
 import difflib
 import io
+import zipfile
+import zlib
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from itertools import islice
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
+from xml.etree import ElementTree
 
 import numpy as np
 from numpy.typing import NDArray
 
 from foredeck.errors import IntakeError
+from foredeck.intake.workbook_errors import error_cells
+
+if TYPE_CHECKING:
+    from python_calamine import CalamineWorkbook
 
 TEXT_ENDINGS = (".csv", ".txt", ".tsv")
 WORKBOOK_ENDINGS = (".xlsx", ".xlsm", ".xls", ".ods")
@@ -210,20 +217,28 @@ def _workbook_cells(path: Path, sheet: str | None) -> Cells:
     import python_calamine
 
     try:
-        workbook = python_calamine.CalamineWorkbook.from_path(path)
-    except python_calamine.CalamineError as error:
+        return _sheet_cells(path, python_calamine.CalamineWorkbook.from_path(path), sheet)
+    except (python_calamine.CalamineError, zipfile.BadZipFile, zlib.error, ElementTree.ParseError) as error:
         raise IntakeError(f"the workbook cannot be opened: {error}", where=str(path),
                           allowed=", ".join(WORKBOOK_ENDINGS),
                           do="open it in Excel and save it again") from error
+
+
+def _sheet_cells(path: Path, workbook: CalamineWorkbook, sheet: str | None) -> Cells:
     names = workbook.sheet_names
     if sheet is not None and sheet not in names:
         near = difflib.get_close_matches(sheet, names, n=1)
         raise IntakeError(f"there is no sheet {sheet!r}", where=str(path),
                           allowed=", ".join(map(repr, names)),
                           do=f"did you mean {near[0]!r}?" if near else "use one of these names", value=sheet)
+    if not names:
+        _check_body(path.name, None, 0)
     taken = names[0] if sheet is None else sheet
     # With the empty area kept, the rows counted here are the rows that Excel shows.
-    rows = workbook.get_sheet_by_name(taken).to_python(skip_empty_area=False)
+    rows: list[list[Any]] = workbook.get_sheet_by_name(taken).to_python(skip_empty_area=False)
+    for (row, column), text in error_cells(path, taken).items():
+        if row < len(rows) and column < len(rows[row]):
+            rows[row][column] = text
     kind = f"Excel, the first of {len(names)} sheets" if sheet is None and len(names) > 1 else "Excel"
     file = f"{path.name} sheet {taken!r}"
     kept = [at for at, row in enumerate(rows) if any(text_of(cell) for cell in row)]
