@@ -15,6 +15,7 @@ from foredeck.charts.time_axis import TimeAxis
 
 HEIGHT, TOP, FOOT = 320, 18, 40
 COUNT = 12
+_OUTSIDE = (label("above"), label("below"))
 
 
 def last_time(study: StudyLike, id: str = "last-time") -> Figure:
@@ -31,14 +32,17 @@ def last_time_figure(reliability: pd.DataFrame, *, closing: str, frequency: str,
     ----------
     reliability : columns period, lead, forecast, actual, lower_.., upper_..
         rows of other leads, and rows without an actual, are passed over; at least one must remain.
+        The first origins have no range yet: where later ones have, only those are drawn.
     """
     time = TimeAxis.closed_at(closing, frequency)
     outer, inner = outer_and_inner(levels)
     rows = reliability[(reliability["lead"] == 1) & reliability["actual"].notna()]
+    ranged = rows[f"lower_{outer}"].notna()
+    rows = rows[ranged] if ranged.any() else rows
     rows = rows.assign(at=time.places(rows["period"])).sort_values("at").tail(COUNT)
     above, below = rows["actual"] > rows[f"upper_{outer}"], rows["actual"] < rows[f"lower_{outer}"]
-    rows = rows.assign(where=[label("above") if a else label("below") if b else label("inside")
-                              for a, b in zip(above, below, strict=True)])
+    rows = rows.assign(where=[label("above") if a else label("below") if b else label("inside") if ranged.any()
+                              else label("no range") for a, b in zip(above, below, strict=True)])
     outside = rows[above | below]
     axis = value_axis([*rows["actual"], *rows["forecast"], *rows[f"lower_{outer}"], *rows[f"upper_{outer}"]], room=0.1)
     decimals = decimals_for([*rows["actual"]])
@@ -65,7 +69,7 @@ def _traces(rows: pd.DataFrame, time: TimeAxis, outer: int, inner: int | None, d
         traces.append(blocks(rows["at"], rows[f"lower_{inner}"], rows[f"upper_{inner}"], role("before50")))
     said = [f"{time.name(r['at'])}: {label('said')} {number(r['forecast'], decimals)}" for r in rows.to_dict("records")]
     traces.append(scatter(rows["at"], rows["forecast"], role("said_before"), said))
-    for part, inside in ((rows["where"] == label("inside"), True), (rows["where"] != label("inside"), False)):
+    for part, inside in ((~rows["where"].isin(_OUTSIDE), True), (rows["where"].isin(_OUTSIDE), False)):
         some = rows[part]
         if some.empty:
             continue
@@ -88,12 +92,23 @@ def _notes(rows: pd.DataFrame, outside: pd.DataFrame, axis: Any, outer: int, dec
     heights = pushed_apart([w[0] for w in wanted], axis, HEIGHT - TOP - FOOT, 20)
     notes = [note(float(end["at"]) + 0.5, y, text, token, xshift=6, bold=token == "ink", size=12 if short else 13)
              for y, (_, text, token) in zip(heights, wanted, strict=True)]
+    tall = 24 / (HEIGHT - TOP - FOOT) * (axis.high - axis.low)
     for row in outside.to_dict("records"):
         up = row["where"] == label("above")
         text = number(row["actual"], decimals) if short else f"{label('outside')}, {number(row['actual'], decimals)}"
-        notes.append(note(row["at"], row["actual"], text, "madder", xanchor="center",
+        band = (row["actual"], row["actual"] + tall) if up else (row["actual"] - tall, row["actual"])
+        notes.append(note(row["at"], row["actual"], text, "madder", xanchor=_free_side(rows, row["at"], band, outer),
                           yanchor="bottom" if up else "top", yshift=7 if up else -7))
     return notes
+
+
+def _free_side(rows: pd.DataFrame, at: int, band: tuple[float, float], outer: int) -> str:
+    """Say where a label at a height goes so that it does not lie on a neighbour's block."""
+    beside = rows[rows["at"].isin([at - 1, at + 1])]
+    met = beside[(beside[f"lower_{outer}"] <= band[1]) & (beside[f"upper_{outer}"] >= band[0])]["at"]
+    if met.empty or len(met) == 2:
+        return "center"
+    return "right" if met.iloc[0] > at else "left"
 
 
 def _table(rows: pd.DataFrame, time: TimeAxis, outer: int, decimals: int) -> pd.DataFrame:

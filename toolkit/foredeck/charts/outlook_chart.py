@@ -195,11 +195,12 @@ class _Outlook:
         """Label the repairs in sight, on the side away from the line; the newest four only."""
         notes = []
         used = self.past.set_index("at")["used"]
+        reach = 0.04 * (self.last - begin + 1)
         for row in self.past[self.past["repaired"] & (self.past["at"] >= begin)].tail(4).to_dict("records"):
             at, y, raw = row["at"], float(row["used"]), float(row["raw"])
             near = used.reindex([at - 1, at + 1]).mean()
             below = near > y
-            notes.append(note(at, y, label("repaired"), "green", xanchor="center",
+            notes.append(note(at, y, label("repaired"), "green", xanchor="left" if at - begin < reach else "center",
                               yanchor="top" if below else "bottom", yshift=-8 if below else 8))
             if self.axis.low <= raw <= self.axis.high:
                 notes.append(note(at, raw, label("raw", value=self.write(raw)), "green", xshift=9))

@@ -30,6 +30,14 @@ def decimals_for(values: Iterable[float], digits: int = 3) -> int:
     return max(0, digits - 1 - math.floor(math.log10(largest)))
 
 
+def two_figures(value: float) -> str:
+    """Write an average to two significant figures, which is what a record of some dozen misses supports."""
+    if not math.isfinite(value) or value == 0:
+        return number(value)
+    places = 1 - math.floor(math.log10(abs(value)) + 1e-9)
+    return number(round(value, places), max(0, places))
+
+
 @dataclass(frozen=True)
 class ValueAxis:
     """A value axis: its ends, its ticks, and their text."""

@@ -6,7 +6,7 @@ import pandas as pd
 
 from foredeck.charts.figure import Figure, note, scatter
 from foredeck.charts.labels import benchmark_label, label
-from foredeck.charts.scale import decimals_for, number, pushed_apart, value_axis
+from foredeck.charts.scale import decimals_for, number, pushed_apart, two_figures, value_axis
 from foredeck.charts.source import StudyLike
 from foredeck.charts.theme import role
 from foredeck.periods import Frequency
@@ -64,15 +64,15 @@ def trust_figure(misses: pd.DataFrame, *, frequency: str, unit: str, id: str = "
     ends = [(float(misses["miss"].iloc[-1]), label("forecast"), "plum", lead[-1])]
     if len(other):
         ends.append((float(other["benchmark"].iloc[-1]), name, "ink2", int(other["lead"].iloc[-1])))
-    placed = pushed_apart([e[0] for e in ends], axis, height - top - foot)
+    placed = pushed_apart([e[0] for e in ends], axis, height - top - foot, 20)
     notes = [note(max(lead), y, text, token, xshift=11, bold=token == "plum")
              for y, (_, text, token, _) in zip(placed, ends, strict=True)]
     first_miss, first_other = float(misses["miss"].iloc[0]), float(misses["benchmark"].iloc[0])
     under = not first_miss > first_other
-    notes.append(note(lead[0], first_miss, f"{number(first_miss, decimals)} {unit}", "plum", xanchor="center",
+    notes.append(note(lead[0], first_miss, f"{two_figures(first_miss)} {unit}", "plum", xanchor="center",
                       yanchor="top" if under else "bottom", yshift=-10 if under else 10))
     if first_other == first_other:
-        notes.append(note(lead[0], first_other, number(first_other, decimals), "ink2", xanchor="center",
+        notes.append(note(lead[0], first_other, two_figures(first_other), "ink2", xanchor="center",
                           yanchor="bottom" if under else "top", yshift=9 if under else -9))
     margin = {"l": axis.margin, "r": 138, "t": top, "b": foot}
     step = max(1, -(-len(lead) // 13))
@@ -83,10 +83,10 @@ def trust_figure(misses: pd.DataFrame, *, frequency: str, unit: str, id: str = "
               "xaxis": {"range": [lead[0] - 1.6, lead[-1] + 0.5], "tickvals": lead[::max(1, -(-len(lead) // 5))]}}
     against = ""
     if len(other):
-        against = label("trust against", benchmark=name, first=number(float(other["benchmark"].iloc[0]), decimals),
-                        last=number(float(other["benchmark"].iloc[-1]), decimals))
-    alt = label("trust alt", plural=every.plural, unit=unit, first=number(first_miss, decimals), lead_first=lead[0],
-                last=number(float(misses["miss"].iloc[-1]), decimals), lead_last=lead[-1], against=against)
+        against = label("trust against", benchmark=name, first=two_figures(float(other["benchmark"].iloc[0])),
+                        last=two_figures(float(other["benchmark"].iloc[-1])))
+    alt = label("trust alt", plural=every.plural, unit=unit, first=two_figures(first_miss), lead_first=lead[0],
+                last=two_figures(float(misses["miss"].iloc[-1])), lead_last=lead[-1], against=against)
     table = pd.DataFrame(
         [[str(r["lead"]), number(r["miss"], decimals), number(r["benchmark"], decimals), str(r["n"])]
          for r in misses.to_dict("records")],

@@ -20,7 +20,11 @@ SHOWN = 18
 
 
 def weights(study: StudyLike, names: Mapping[str, str] | None = None, id: str = "weights") -> Figure | None:
-    """Draw the weights of the leading smoothing method of a study; None where there is none with a constant."""
+    """Draw the weights of past periods in the method that leads a study's forecast.
+
+    None where no method with a smoothing constant has at least half of the weight: the
+    chart would then say little about the forecast.
+    """
     leading = leading_constant(study.members)
     if leading is None:
         return None
@@ -30,8 +34,8 @@ def weights(study: StudyLike, names: Mapping[str, str] | None = None, id: str = 
 
 
 def leading_constant(members: pd.DataFrame) -> tuple[str, float] | None:
-    """Return the method with the greatest weight among those that smooth a level, and its alpha."""
-    used = members[(members["weight"] > 0) & (members["lead"] == 1)].sort_values(["weight", "method"],
+    """Return the method that smooths a level and has at least half of the weight, and its alpha."""
+    used = members[(members["weight"] >= 0.5) & (members["lead"] == 1)].sort_values(["weight", "method"],
                                                                                  ascending=[False, True])
     for row in used.to_dict("records"):
         alpha = json.loads(row["constants"] or "{}").get("alpha")

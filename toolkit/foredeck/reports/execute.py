@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import difflib
-import os
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
@@ -44,8 +43,7 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
     ------
     ReportError
         if a parameter is unknown (papermill itself only warns, and runs on defaults) or cannot be passed, or
-        if a cell fails, takes too long, or its kernel dies. Then `out` is not written; what ran is kept
-        beside it as `NAME.failed.ipynb`.
+        if a cell fails, takes too long, or its kernel dies. Then nothing is left of `out`.
     """
     notebook, out = Path(notebook), Path(out)
     _refuse_unknown(notebook, parameters)
@@ -55,28 +53,29 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
     from papermill import execute_notebook
     from papermill.exceptions import PapermillExecutionError
 
-    partly = out.with_name(f"{out.stem}.failed.ipynb")
+    partly = out.with_name(f"{out.stem}.part.ipynb")
     try:
         execute_notebook(
             str(notebook), str(partly), dict(parameters), kernel_name="python3", progress_bar=False, log_output=False,
             start_timeout=START_SECONDS, execution_timeout=cell_seconds, request_save_on_cell_execute=False,
             autosave_cell_every=0, cwd=None if folder is None else str(folder))
     except PapermillExecutionError as error:
-        raise _failed(notebook, partly, f"cell {error.cell_index} failed: {error.ename}: {error.evalue}",
+        raise _failed(notebook, f"cell {error.cell_index + 1} failed: {error.ename}: {error.evalue}",
                       "mend the cause and run the notebook again") from error
     except CellTimeoutError as error:
-        raise _failed(notebook, partly, f"a cell ran for more than {cell_seconds} seconds",
+        raise _failed(notebook, f"a cell ran for more than {cell_seconds} seconds",
                       "give it more time, or look for what it waits for") from error
     except (DeadKernelError, RuntimeError) as error:
-        raise _failed(notebook, partly, f"the kernel died: {error}", "look for exhausted memory; then run it again") from error
-    os.replace(partly, out)
-    return out
+        raise _failed(notebook, f"the kernel died: {error}", "look for exhausted memory; then run it again") from error
+    else:
+        partly.replace(out)
+        return out
+    finally:
+        partly.unlink(missing_ok=True)
 
 
-def _failed(notebook: Path, partly: Path, what: str, do: str) -> ReportError:
-    kept = f"; what ran is kept in {partly}" if partly.exists() else ""
-    return ReportError(f"{notebook.name}: {what}", where=str(notebook), allowed="notebooks whose every cell runs",
-                       do=do + kept, kept=str(partly))
+def _failed(notebook: Path, what: str, do: str) -> ReportError:
+    return ReportError(f"{notebook.name}: {what}", where=str(notebook), allowed="notebooks whose every cell runs", do=do)
 
 
 def _refuse_unknown(notebook: Path, parameters: Mapping[str, Any]) -> None:

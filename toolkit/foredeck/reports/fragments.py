@@ -24,9 +24,12 @@ def say(text: str) -> str:
     return f'<p class="say">{escape(text)}</p>' if text else ""
 
 
-def paragraph(text: str, css: str = "") -> str:
-    """Write one paragraph of plain text."""
-    return f'<p{f" class={chr(34)}{css}{chr(34)}" if css else ""}>{escape(text)}</p>' if text else ""
+def paragraph(text: str, css: str = "", lead: str = "") -> str:
+    """Write one paragraph of plain text, its lead in bold; nothing for no text."""
+    if not text:
+        return ""
+    form = f' class="{escape(css)}"' if css else ""
+    return f"<p{form}>{f'<b>{escape(lead)}</b> ' if lead else ''}{escape(text)}</p>"
 
 
 @dataclass(frozen=True)

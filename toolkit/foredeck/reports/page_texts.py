@@ -41,7 +41,7 @@ TEXTS: dict[str, str] = {
     "data words": "{n} {plural}, {first} to {last}",
     "fingerprint": "fingerprint {print}",
     "levels": "Levels {levels}; from the misses of past forecasts",
-    "style": "{style}, {n} series; {words}",
+    "style": "Style {style}; {n} series. {words}", "output": "Output of a cell",
 }
 
 

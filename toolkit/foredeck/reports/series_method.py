@@ -44,8 +44,7 @@ def pattern(study: Study) -> Section:
     parts: list[Part] = [say(str(study.info.get("pattern_words") or words("pattern unknown"))),
                          pairs(_strengths(study, facts)), season_chart(study) or ""]
     if facts.forecast:
-        lead = f"{words('method lead')} {study.info.get('method_words') or ''}".strip()
-        parts.append(paragraph(lead))
+        parts.append(paragraph(str(study.info.get("method_words") or ""), lead=words("method lead")))
         names = {m: method_name(m) for m in study.members["method"].unique()}
         parts += [members_chart(study, names) or "", weights_chart(study, names) or ""]
     if len(study.eligibility):

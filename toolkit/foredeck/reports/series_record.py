@@ -109,7 +109,7 @@ def _fit(study: Study) -> str:
     fit = study.portfolio
     if not fit.get("n_series"):
         return ""
-    return text("style", style=str(fit.get("style", "")), n=fit["n_series"], words=str(fit.get("words", ""))).rstrip("; ")
+    return text("style", style=str(fit.get("style", "")), n=fit["n_series"], words=str(fit.get("words", ""))).strip()
 
 
 def glossary(study: Study) -> Section:

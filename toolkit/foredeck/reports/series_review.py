@@ -14,7 +14,7 @@ from foredeck.reports.series_outlook import period_cell
 from foredeck.study import Study
 from foredeck.tables.html import Cell, Column, table
 from foredeck.wording.catalogue import say as words
-from foredeck.wording.facts import SeriesFacts, facts_of
+from foredeck.wording.facts import SeriesFacts, facts_of, is_known
 from foredeck.wording.numbers import plain, signed
 from foredeck.wording.sections import (
     adjustment_words,
@@ -67,7 +67,7 @@ def last_time(study: Study) -> Section | None:
     if not facts.forecast:
         return None
     parts: list[Part] = [say(last_time_words(facts))]
-    if facts.one_ahead.n:
+    if is_known(facts.one_ahead.miss):
         parts.append(last_time_chart(study))
     parts.append(paragraph(lean_words(facts)))
     return Section("last", words("last title"), words("last sub", noun=facts.frequency.noun), parts)

@@ -174,8 +174,11 @@ def _surprise(facts: SeriesFacts) -> str:
 
 def _trust(facts: SeriesFacts) -> Answer:
     tried, plural = facts.one_ahead, facts.frequency.plural
-    if not tried.n:
+    if not is_known(tried.miss):
         return Answer(say("ask trust"), say("trust none"), "", "", say("trust none text", plural=plural))
+    if not tried.n:
+        return Answer(say("ask trust"), say("trust unranged"), "", "",
+                      f"{typical_miss(facts)} {say('trust unranged text')}")
     text = " ".join([say("trust expected", expected=whole(tried.expected)), typical_miss(facts), say("trust note")])
     return Answer(say("ask trust"), say("trust big", inside=tried.inside, n=tried.n), say("trust small"),
                   say("trust lead", inside=tried.inside, n=tried.n), text)

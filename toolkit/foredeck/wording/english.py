@@ -96,6 +96,7 @@ _HEAD = {
     "trust miss worse": "Typical miss {miss} {unit}, {share} larger than “{benchmark}”.",
     "trust miss far": "Typical miss {miss} {unit}, against {other} for “{benchmark}”.",
     "trust miss same": "Typical miss {miss} {unit}, the same as “{benchmark}”.",
+    "trust unranged": "Not yet known", "trust unranged text": "No range could be tried on this series yet.",
     "trust none": "Not tried",
     "trust none text": "The history is too short to forecast it again from past {plural}: treat the range with care.",
     "strip caption": "{when} on one scale: the range, the forecast, a year before and last round.",

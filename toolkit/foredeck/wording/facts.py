@@ -100,8 +100,9 @@ class Said:
 class OneAhead:
     """How forecasts one period ahead did in the procedure backtest.
 
-    `miss` and `benchmark_miss` are mean absolute errors in the series' unit over the
-    same cells; `benchmark_miss` is NaN where no cell has a benchmark.
+    `n` counts the newest that had a range, and `inside`, `expected`, `above` and `below` are of those.
+    `miss` and `benchmark_miss` are mean absolute errors in the series' unit over all that were tried;
+    they are NaN where nothing was, the latter also where a cell has no benchmark.
     """
 
     n: int
@@ -190,38 +191,19 @@ def row_of(frame: pd.DataFrame, period: str) -> pd.Series[Any] | None:
 
 
 def one_ahead(reliability: pd.DataFrame, outer: int, count: int = TRIED) -> OneAhead:
-    """Count and measure the newest `count` forecasts one period ahead.
+    """Count the hits of the newest `count` forecasts one period ahead, and measure the misses of all.
 
-    Cells without an actual are left out; benchmark and forecast are compared on the
-    cells that have both.
+    Cells without an actual are left out, and for the hits those without a range (the first origins
+    have none yet).
     """
-    rows = reliability[(reliability["lead"] == 1) & reliability["actual"].notna()]
-    rows = rows.sort_values("period").tail(count)
+    tried = reliability[(reliability["lead"] == 1) & reliability["actual"].notna()]
+    rows = tried[tried[f"lower_{outer}"].notna()].sort_values("period").tail(count)
     inside = (rows["actual"] >= rows[f"lower_{outer}"]) & (rows["actual"] <= rows[f"upper_{outer}"])
-    both = rows[rows["benchmark"].notna()]
+    miss, other = (tried["actual"] - tried["forecast"]).abs(), (tried["actual"] - tried["benchmark"]).abs()
     return OneAhead(
         n=len(rows), inside=int(inside.sum()), expected=outer / 100 * len(rows),
         above=int((rows["actual"] > rows["forecast"]).sum()), below=int((rows["actual"] < rows["forecast"]).sum()),
-        miss=float((rows["actual"] - rows["forecast"]).abs().mean()) if len(rows) else NAN,
-        benchmark_miss=float((both["actual"] - both["benchmark"]).abs().mean()) if len(both) == len(rows) > 0 else NAN,
-    )
-
-
-def miss_by_lead(reliability: pd.DataFrame, least: int = 3) -> pd.DataFrame:
-    """Mean absolute error of forecast and benchmark by lead, over all tried origins.
-
-    Leads with fewer than `least` cells are left out. The benchmark is NaN unless every
-    cell of the lead has one.
-    """
-    rows = reliability[reliability["actual"].notna()]
-    table = pd.DataFrame({
-        "lead": rows["lead"], "miss": (rows["actual"] - rows["forecast"]).abs(),
-        "benchmark": (rows["actual"] - rows["benchmark"]).abs()})
-    grouped = table.groupby("lead")
-    done = pd.DataFrame({
-        "n": grouped["miss"].size(), "miss": grouped["miss"].mean(),
-        "benchmark": grouped["benchmark"].mean().where(grouped["benchmark"].count() == grouped["miss"].size())})
-    return done[done["n"] >= least].reset_index()
+        miss=float(miss.mean()), benchmark_miss=float(other.mean()) if other.notna().all() else NAN)
 
 
 def facts_of(study: StudyLike) -> SeriesFacts:

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import math
-
 import pandas as pd
 
 from foredeck.periods import parse_period, period_name
@@ -65,16 +63,15 @@ def landing_words(facts: SeriesFacts, totals: pd.DataFrame) -> str:
 
 def trust_words(facts: SeriesFacts, misses: pd.DataFrame) -> str:
     """Say the typical miss and at how many distances the forecast beats the benchmark."""
-    if not facts.one_ahead.n:
+    if not is_known(facts.one_ahead.miss):
         return say("trust untried")
     rows = misses[misses["benchmark"].notna()]
-    first = misses[misses["lead"] == 1]
-    if rows.empty or first.empty or math.isnan(first["benchmark"].iloc[0]):
+    if rows.empty or not is_known(facts.one_ahead.benchmark_miss):
         return typical_miss(facts)
     benchmark = benchmark_name(facts.frequency)
     write = facts.figures_of_misses.text
-    text = say("trust say against", noun=facts.frequency.noun, miss=write(first["miss"].iloc[0]), unit=facts.unit,
-               other=write(first["benchmark"].iloc[0]), benchmark=benchmark)
+    text = say("trust say against", noun=facts.frequency.noun, miss=write(facts.one_ahead.miss), unit=facts.unit,
+               other=write(facts.one_ahead.benchmark_miss), benchmark=benchmark)
     better, every = int((rows["miss"] < rows["benchmark"]).sum()), len(rows)
     if every == 1:
         return text
@@ -85,8 +82,11 @@ def trust_words(facts: SeriesFacts, misses: pd.DataFrame) -> str:
 
 
 def range_record_words(facts: SeriesFacts, reliability: pd.DataFrame) -> str:
-    """Count the actuals inside the outer range over every origin and lead, against the expected count."""
-    rows = reliability[reliability["actual"].notna()]
+    """Count the actuals inside the outer range over every origin and lead, against the expected count.
+
+    Cells without a range (those of the first origins) are left out; empty without any.
+    """
+    rows = reliability[reliability["actual"].notna() & reliability[f"lower_{facts.outer}"].notna()]
     if rows.empty:
         return ""
     inside = int(((rows["actual"] >= rows[f"lower_{facts.outer}"])
