@@ -39,7 +39,8 @@ def write_folder(folder: Path, months: int = 54, extra: str = "", seed: int = 7)
     lines = ["depot,family,month,cases,price"]
     for at, name in enumerate(SERIES):
         depot, family = name.split("/")
-        season = 1 + 0.3 * np.sin(2 * np.pi * (np.arange(months) + 3 * at) / 12) if family == "peat" else np.ones(months)
+        swing = 0.3 if family == "peat" else 0.0
+        season = 1 + swing * np.sin(2 * np.pi * (np.arange(months) + 3 * at) / 12)
         values = np.round(400 * (at + 1) * season * (1 + 0.05 * rng.normal(size=months)))
         for i, value in enumerate(values):
             month = f"{2023 + i // 12}-{i % 12 + 1:02d}"

@@ -11,11 +11,12 @@ import pytest
 from small_round import SERIES, write_folder
 
 from foredeck.errors import SettingsError
+from foredeck.intake.files import read_source
 from foredeck.periods import FinancialYear
 from foredeck.portfolio.totals import windows
 from foredeck.rounds import compute as passes
 from foredeck.rounds.compute import Computed, compute_round, data_fingerprint
-from foredeck.rounds.source import closing_of, read_history
+from foredeck.rounds.source import closing_of
 from foredeck.settings import Settings, load_settings
 from foredeck.study import TABLES, study
 
@@ -25,7 +26,7 @@ def quiet(*_: Any) -> None:
 
 
 def run(settings: Settings) -> Computed:
-    history = read_history(settings)
+    history = read_source(settings)
     return compute_round(history, closing_of(history, settings), settings, quiet)
 
 
@@ -75,7 +76,7 @@ def test_totals_add_forecasts_exactly_and_ranges_less_than_exactly(computed: Com
 
 def test_the_landing_is_actuals_to_date_plus_forecast(settings: Settings, computed: Computed) -> None:
     # closing 2027-06, calendar year: six months known, six to come
-    actuals = read_history(settings).actuals
+    actuals = read_source(settings).actuals
     year = computed.tables["totals"].query("scope == 'all' and window == 'year'").iloc[0]
     assert (year["first"], year["last"]) == ("2027-01", "2027-12")
     known = actuals[actuals["period"] >= pd.Period("2027-01", "M")]["value"].sum()
@@ -94,7 +95,7 @@ def test_reliability_says_at_each_origin_what_a_run_on_the_shorter_history_says(
                                                                                computed: Computed) -> None:
     # cut the history, run everything again, compare. 51 months and 54 begin with the same origin (25 months known),
     # so that both know the same past errors.
-    history = read_history(settings)
+    history = read_source(settings)
     closing = closing_of(history, settings)
     earlier = compute_round(history, closing - 3, settings, quiet).tables["forecasts"]
     lived = computed.tables["reliability"]
@@ -108,7 +109,7 @@ def test_reliability_says_at_each_origin_what_a_run_on_the_shorter_history_says(
 
 
 def test_a_study_with_the_rounds_fit_equals_the_round(settings: Settings, computed: Computed) -> None:
-    one = study(read_history(settings)["river/peat"], portfolio_fit=computed.portfolio)
+    one = study(read_source(settings)["river/peat"], portfolio_fit=computed.portfolio)
     for name in ("forecasts", "reliability", "members", "error_table", "actuals"):
         stored = computed.tables[name]
         stored = stored[stored["series"] == "river/peat"].reset_index(drop=True)
@@ -138,12 +139,12 @@ def test_a_series_too_short_is_listed_with_its_reason(tmp_path: Path) -> None:
 
 
 def test_the_data_fingerprint_changes_with_one_value(tmp_path: Path, settings: Settings) -> None:
-    history = read_history(settings)
+    history = read_source(settings)
     closing = closing_of(history, settings)
     same = load_settings(write_folder(tmp_path / "same"))
     other = load_settings(write_folder(tmp_path / "other", seed=8))
-    assert data_fingerprint(read_history(same), closing, same) == data_fingerprint(history, closing, settings)
-    assert data_fingerprint(read_history(other), closing, other) != data_fingerprint(history, closing, settings)
+    assert data_fingerprint(read_source(same), closing, same) == data_fingerprint(history, closing, settings)
+    assert data_fingerprint(read_source(other), closing, other) != data_fingerprint(history, closing, settings)
 
 
 def test_an_unknown_method_is_the_settings_fault(tmp_path: Path) -> None:

@@ -17,7 +17,6 @@ from numpy.typing import NDArray
 
 from foredeck.backtest.error_table import Cube, build_cube
 from foredeck.backtest.measures import mase_scale
-from foredeck.checks.decomposition import decompose
 from foredeck.checks.differencing import difference
 from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern
 from foredeck.checks.findings import find
@@ -72,7 +71,8 @@ class Alone:
     """What pass 1 knows of one series.
 
     `offsets[o]` counts the periods between an origin of `cube` and the closing period,
-    so that origins of different series can be laid side by side. `pool[m, o]` says whether
+    so that origins of different series can be laid side by side. `reasons` says why a method
+    is not eligible, or is kept out of the forecast; empty when it speaks. `pool[m, o]` says whether
     method m may enter the blend or the choice at that origin; its last column is now.
     """
 
@@ -82,7 +82,6 @@ class Alone:
     periods: pd.PeriodIndex
     findings: pd.DataFrame
     pattern: Pattern
-    pattern_words: str
     differencing_words: str
     reasons: Mapping[str, str]
     cube: Cube
@@ -171,7 +170,8 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
     members = np.array([np.full(horizon, np.nan) if f is None else f.forecast(horizon) for f in fits])
     asked = np.array([options.asked_for(name) for name in methods])
     everywhere = np.isfinite(np.concatenate([cube.forecasts, members[:, None]], axis=1)).all(axis=2) & asked[:, None]
-    pool = everywhere & np.array([[_may_pool(name, seen(int(k))) for k in (*known, len(raw))] for name in methods])
+    pool = everywhere & np.array([[not _kept_out(name, seen(int(k)), int(k) < 2 * m)
+                                     for k in (*known, len(raw))] for name in methods])
     # where the pattern leaves none of the methods asked for, any of them that runs is better than silence
     pool = np.where(pool.any(axis=0)[None, :], pool, everywhere)
     if not pool[:, -1].any():
@@ -181,8 +181,9 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
     return Alone(
         series=series, raw=raw, used=used, periods=periods,
         findings=find(series, closing, nonnegative=options.nonnegative), pattern=now,
-        pattern_words=decompose(used, m).words, differencing_words=difference(used, m).words,
-        reasons=reasons, cube=cube, offsets=len(raw) - known, pool=pool,
+        differencing_words=difference(used, m).words,
+        reasons={name: text or _kept_out(name, now, len(raw) < 2 * m) for name, text in reasons.items()},
+        cube=cube, offsets=len(raw) - known, pool=pool,
         members=members, constants=tuple({} if f is None else dict(f.constants) for f in fits),
         naive_scale=np.array([naive_error(known_then(int(k)), m) for k in (*known, len(raw))]),
         mase_scale=mase_scale(used, m))
@@ -207,14 +208,25 @@ def _known_counts(n: int, season_length: int, horizon: int) -> NDArray[np.int64]
     return np.arange(first, n, dtype=np.int64)
 
 
-def _may_pool(method: str, seen: Pattern) -> bool:
-    """Whether a method may enter the blend or the choice, given the pattern seen at that origin.
+UNDAMPED = ("holt", "differenced_ses")
+"""Methods that carry a trend on without end."""
 
-    Benchmarks are there to be beaten, so they stay out. A method without a season has no
-    place where there is a season, nor one with a season where there is none; intermittent
-    series keep to their own family.
+
+def _kept_out(method: str, seen: Pattern, young: bool) -> str:
+    """Why a method may not enter the blend or the choice, given the pattern seen at that origin; empty if it may.
+
+    While fewer than two seasons are known (`young`), what looks like a trend may be the
+    season, and is not carried on undamped.
     """
     entry = METHODS[method]
+    if entry.family == "benchmark":
+        return "is a benchmark, there to be beaten"
     if seen.intermittent:
-        return entry.family == "demand rate"
-    return entry.family == "smoothing" and entry.seasonal == bool(seen.season)
+        return "" if entry.family == "demand rate" else "is not for intermittent demand"
+    if entry.seasonal and not seen.season:
+        return "repeats a season, and this series shows none"
+    if seen.season and not entry.seasonal:
+        return "knows no season, and this series has one"
+    if young and method in UNDAMPED:
+        return "would carry a trend on that may be the season: fewer than two years are known"
+    return ""

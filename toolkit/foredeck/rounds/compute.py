@@ -11,7 +11,7 @@ from typing import Any
 import pandas as pd
 
 from foredeck.checks.findings import find
-from foredeck.errors import ForedeckError, IntakeError
+from foredeck.errors import ForedeckError, IntakeError, SettingsError
 from foredeck.intake.history import History
 from foredeck.periods import FinancialYear, period_name
 from foredeck.portfolio.alone import Alone, ForecastOptions, examine, not_forecastable
@@ -58,6 +58,7 @@ def compute_round(history: History, closing: pd.Period, settings: Settings, prog
     AdjustmentError
         if a row of the adjustments cannot be applied.
     """
+    _refuse_taken_names(history.group_columns)
     options = forecast_options(settings)
     options.allowed()  # a wrong method name is the settings' fault, not a series'
     known = history.up_to(closing)
@@ -119,6 +120,19 @@ def achieved_coverage(reliability: pd.DataFrame, levels: tuple[int, ...]) -> dic
             "lead": {int(k): float(v) for k, v in inside.groupby(judged["lead"]).mean().items()},  # type: ignore[call-overload]
             "origin": {str(k): float(v) for k, v in inside.groupby(judged["origin"]).mean().items()}}
     return found
+
+
+SERIES_COLUMNS = ("series", "unit", "unit_value", "status", "reason", "first_period", "last_period", "n_periods",
+                  "trend_strength", "season_strength", "adi", "cv2", "demand_class", "pattern_words",
+                  "differencing_words", "method", "method_words", "mase_scale")
+"""Columns of the table `series` beside the groups."""
+
+
+def _refuse_taken_names(groups: list[str]) -> None:
+    for name in groups:
+        if name in SERIES_COLUMNS:
+            raise SettingsError(f"a group cannot be called {name!r}", where="[columns] groups",
+                                allowed=f"any name but {', '.join(SERIES_COLUMNS)}", do="rename the column")
 
 
 def _pass_one(known: History, closing: pd.Period, options: ForecastOptions,

@@ -5,20 +5,9 @@ from __future__ import annotations
 import pandas as pd
 
 from foredeck.errors import SettingsError
-from foredeck.intake.files import read
 from foredeck.intake.history import History, closing_period
 from foredeck.periods import parse_period, period_name
 from foredeck.settings import Settings
-
-
-def read_history(settings: Settings) -> History:
-    """Read the actuals that the settings name."""
-    source, columns = settings.source, settings.columns
-    return read(source.file, layout=source.layout, series=columns.series, period=columns.period, value=columns.value,
-                groups=list(columns.groups), unit=settings.series.unit, unit_value=columns.unit_value,
-                frequency=settings.series.frequency, date_format=source.date_format, sheet=source.sheet,
-                gaps=settings.series.gaps, sum_rows=source.sum_rows, delimiter=source.delimiter,
-                decimal=source.decimal)
 
 
 def closing_of(history: History, settings: Settings, period: str = "") -> pd.Period:

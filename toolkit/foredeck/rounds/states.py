@@ -16,13 +16,14 @@ from typing import Any
 import pandas as pd
 
 from foredeck.errors import RoundStateError
+from foredeck.intake.files import read_source
 from foredeck.intake.history import History
 from foredeck.ledger.round_record import RoundRecord
 from foredeck.ledger.store import Ledger, open_ledger
 from foredeck.periods import period_name
 from foredeck.rounds.compute import Progress, compute_round, data_fingerprint, made_with
 from foredeck.rounds.publish import Published, publish
-from foredeck.rounds.source import closing_of, read_history
+from foredeck.rounds.source import closing_of
 from foredeck.settings import Settings
 from foredeck.study import versions
 
@@ -47,7 +48,7 @@ def run_round(settings: Settings, period: str, progress: Progress) -> Outcome:
     RoundStateError
         if the round is agreed and the data, settings or code have changed since.
     """
-    history = read_history(settings)
+    history = read_source(settings)
     closing = closing_of(history, settings, period)
     ledger = open_ledger(settings.ledger.folder, create=True)
     with ledger.writing():
