@@ -48,6 +48,16 @@ LONG = 28
 """Names with more letters may be broken; shorter ones stay on one line."""
 
 
+LONGEST = 90
+"""Most letters of a name on the page; the workbook and the data files hold it whole."""
+
+
+def shown_name(name: str) -> str:
+    """A name as the page shows it: on one line, and cut in its middle where it is very long."""
+    plain = " ".join("".join(c if c.isprintable() else " " for c in name).split())
+    return plain if len(plain) <= LONGEST else f"{plain[:LONGEST - 30]}…{plain[-29:]}"
+
+
 def name_css(name: str) -> str:
     """Class of the cell of a name: long ones may be broken anywhere."""
     return "long" if len(name) > LONG else ""

@@ -17,7 +17,15 @@ import pandas as pd
 
 from foredeck.errors import ReportError
 from foredeck.ledger.store import open_ledger
-from foredeck.reports.cover_cells import LinkCell, address, as_is, frame_of, name_css, two_digits
+from foredeck.reports.cover_cells import (
+    LinkCell,
+    address,
+    as_is,
+    frame_of,
+    name_css,
+    shown_name,
+    two_digits,
+)
 from foredeck.reports.cover_facts import CoverFacts, cover_facts
 from foredeck.reports.cover_pictures import pictures
 from foredeck.reports.cover_record import cautions, made_facts, state_notes, state_words
@@ -205,7 +213,7 @@ class Cover:
         """Reports that could not be made, with reasons; None where there are none."""
         if not self.failed:
             return None
-        rows = [{"series": Cell(name, css=name_css(name)), "reason": Cell(reason)}
+        rows = [{"series": Cell(shown_name(name), css=name_css(name)), "reason": Cell(reason)}
                 for name, reason in self.failed.items()]
         columns = [Column("series", say("watch series"), as_is),
                    Column("reason", say("silent reason"), as_is, "txt")]
@@ -231,7 +239,7 @@ class Cover:
             f'<ul class="plain">{warnings}</ul>'])
 
     def _link(self, name: str, before: str = "") -> LinkCell:
-        return LinkCell(name, css=name_css(name), href=self.view.links.get(name, ""), before=before)
+        return LinkCell(shown_name(name), css=name_css(name), href=self.view.links.get(name, ""), before=before)
 
 
 def cover_of(view: RoundView, *, watch: pd.DataFrame, changes: pd.DataFrame,

@@ -9,7 +9,7 @@ from html import escape
 import pandas as pd
 
 from foredeck.charts.pictures import small_picture_of
-from foredeck.reports.cover_cells import DrawnCell, address, as_is, frame_of
+from foredeck.reports.cover_cells import DrawnCell, address, as_is, frame_of, shown_name
 from foredeck.reports.cover_facts import CoverFacts, group_columns
 from foredeck.reports.cover_texts import say
 from foredeck.reports.cover_words import share_text
@@ -59,7 +59,7 @@ def pictures(view: RoundView, facts: CoverFacts, watch: pd.DataFrame) -> str:
 
 
 def _list(cells: dict[str, DrawnCell], lead: str, rest: str) -> str:
-    items = "".join(f'<li><span class="name" aria-hidden="true">{escape(name)}</span>{cell.drawing}</li>'
+    items = "".join(f'<li><span class="name" aria-hidden="true">{escape(shown_name(name))}</span>{cell.drawing}</li>'
                     for name, cell in cells.items())
     caption = f'<p class="caption"><b>{escape(lead)}</b> {escape(rest)}</p>'
     return f'<div class="pictures flat">{caption}<ul>{items}</ul></div>'
@@ -135,7 +135,7 @@ def _drawn(view: RoundView, facts: CoverFacts, watch: pd.DataFrame,
         picture = small_picture_of(name, actuals.get(name, nothing[0]), adjusted.get(name, nothing[1]),
                                    closing=view.closing, frequency=view.frequency, unit=facts.unit,
                                    levels=view.levels, past=past, ahead=ahead)
-        drawing = f'<span class="vh">{escape(name)}: </span>{picture.svg}{_under(facts, name, ranks)}'
+        drawing = f'<span class="vh">{escape(shown_name(name))}: </span>{picture.svg}{_under(facts, name, ranks)}'
         if name in view.links:
             drawing = f'<a href="{address(view.links[name])}">{drawing}</a>'
         cells[name] = DrawnCell("", drawing=drawing)

@@ -9,7 +9,7 @@ import pandas as pd
 
 from foredeck.charts.pictures import totals_bar
 from foredeck.periods import Frequency
-from foredeck.reports.cover_cells import DrawnCell, as_is, frame_of, marked, name_css
+from foredeck.reports.cover_cells import DrawnCell, as_is, frame_of, marked, name_css, shown_name
 from foredeck.reports.cover_facts import CoverFacts, Total
 from foredeck.reports.cover_texts import one_or_many, say
 from foredeck.reports.cover_words import share_text
@@ -92,7 +92,7 @@ def _cells(facts: CoverFacts, total: Total, reach: float) -> dict[str, Any]:
     inner = (ahead.inner_lower, ahead.inner_upper) if facts.inner is not None else None
     bar = totals_bar(ahead.value, (ahead.lower, ahead.upper), inner, total.level_of_last_year, reach)
     star = "*" if total.without else ""
-    head = Cell(total.member, css=name_css(total.member))
+    head = Cell(shown_name(total.member), css=name_css(total.member))
     if total.scope == "all":
         head = Cell(say("totals all", count=plain(len(facts.next))), narrow=say("totals all short"))
     return {"head": head, "past": Cell(_recorded(total.last_year, total.figures), mark=star),

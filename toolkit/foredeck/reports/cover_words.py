@@ -6,6 +6,7 @@ import math
 
 import pandas as pd
 
+from foredeck.reports.cover_cells import shown_name
 from foredeck.reports.cover_facts import CoverFacts, Total
 from foredeck.reports.cover_texts import one_or_many, say
 from foredeck.wording.answers import Answer
@@ -106,7 +107,7 @@ def _what_changed(facts: CoverFacts, changes: pd.DataFrame) -> Answer:
         return Answer(say("what changed"), say("changed first"), "", "", say("changed first text"))
     moved = moves(facts, changes)
     up, down = moved[moved["change"] > 0], moved[moved["change"] < 0]
-    named = [say(f"changed {way}", series=row["series"],
+    named = [say(f"changed {way}", series=shown_name(row["series"]),
                  size=_size(row["change"], facts.figures(str(row["series"]))))
              for way, rows in (("up", up.iloc[:1]), ("down", down.iloc[-1:])) for _, row in rows.iterrows()]
     lead = f"{named[0]}{';' if len(named) > 1 else '.'}" if named else ""
@@ -209,7 +210,7 @@ def _needs(watch: pd.DataFrame) -> Answer:
         return Answer(say("needs"), say("needs none"), "", "", say("needs none text"))
     first = watch.sort_values("rank").iloc[0]
     return Answer(say("needs"), plain(len(watch)), say("needs small"),
-                  say("needs first", series=first["series"]), str(first["reasons"]))
+                  say("needs first", series=shown_name(first["series"])), str(first["reasons"]))
 
 
 def turned_out_sentences(facts: CoverFacts) -> str:
