@@ -41,6 +41,12 @@ def test_zeros_of_an_intermittent_series_are_no_finding() -> None:
     assert zero_runs(y, 12) == []
 
 
+def test_zero_is_nothing_special_where_values_go_below_it() -> None:
+    y = selling() - 300.0
+    y[20:24] = 0.0
+    assert zero_runs(y, 12) == []
+
+
 def test_small_counts_have_zeros_by_chance() -> None:
     y = np.random.default_rng(1).poisson(1.8, 84).astype(float)
     y[40:43] = 0.0

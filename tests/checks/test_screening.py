@@ -114,6 +114,21 @@ def test_what_is_expected_does_not_follow_the_outlier() -> None:
     assert screen(y, 12).expected[40] == pytest.approx(plain, rel=0.02)
 
 
+@pytest.mark.parametrize("seed", range(30))
+def test_hostile_values_raise_nothing_and_stay_finite(seed: int) -> None:
+    """Cauchy noise, half of the periods missing, steps, specks on a huge level: no warning, no NaN left over."""
+    rng = np.random.default_rng(seed)
+    n = int(rng.integers(0, 90))
+    values = [100.0 * rng.standard_cauchy(n), np.exp(rng.normal(0.0, 3.0, n)), 1e8 + 1e-3 * rng.normal(size=n),
+              np.repeat(rng.normal(100.0, 10.0, n // 6 + 1), 6)[:n], np.cumsum(rng.standard_cauchy(n))][seed % 5]
+    holed = np.where(rng.uniform(size=n) < (seed % 3) / 4, np.nan, values)
+    for season_length in (1, 4, 12, 52):
+        screening = screen(holed, season_length)
+        there = np.isfinite(holed)
+        assert np.isfinite(screening.expected[there]).all()
+        assert all(there[s.position] for s in screening.standouts)
+
+
 def detected(kind: str, n: int, plant: float, code: str, shift: bool = False) -> float:
     """Share of 100 series in which something planted at a random period is found there."""
     hits = 0

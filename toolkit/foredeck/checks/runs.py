@@ -35,7 +35,8 @@ def zero_runs(values: Array, season_length: int) -> list[Run]:
 
     How likely a zero is, is taken from the other periods: their share of zeros, the same
     periods of other years, and, of whole numbers, the Poisson chance of none at the usual
-    value of that time of year. A run that comes every year is no finding.
+    value of that time of year. A run that comes every year is no finding, nor is any run where
+    values go below zero, because zero is nothing special there.
 
     Parameters
     ----------
@@ -49,6 +50,8 @@ def zero_runs(values: Array, season_length: int) -> list[Run]:
     list of Run, by position
     """
     found: list[Run] = []
+    if bool((values < 0.0).any()):
+        return found
     runs = [run for run in _equal_runs(values) if run.value == 0.0]
     outside = np.isfinite(values)
     # The longest first, so that it does not make the zeros of a shorter one look usual.

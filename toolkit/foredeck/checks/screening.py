@@ -184,7 +184,21 @@ def _search(values: Array, season_length: int, found: _Found) -> tuple[_Found, E
 def _fit(values: Array, season_length: int, missing: NDArray[np.intp], found: _Found,
          like: Expectation | None = None) -> Expectation | None:
     left_out = np.union1d(missing, np.array(found.spikes, dtype=np.intp))
-    return fit(values, season_length, left_out, np.array(sorted(found.steps), dtype=np.intp), like)
+    speaks = np.ones(values.size, dtype=bool)
+    speaks[left_out] = False
+    found.steps = _borne_out(sorted(found.steps), speaks)
+    return fit(values, season_length, left_out, np.array(found.steps, dtype=np.intp), like)
+
+
+def _borne_out(steps: list[int], speaks: NDArray[np.bool_]) -> list[int]:
+    """Steps with two periods that speak on either side; a level of which none speaks cannot be fitted."""
+    kept: list[int] = []
+    for i, step in enumerate(steps):
+        begin = kept[-1] if kept else 0
+        end = steps[i + 1] if i + 1 < len(steps) else speaks.size
+        if speaks[begin:step].sum() >= 2 and speaks[step:end].sum() >= 2:
+            kept.append(step)
+    return kept
 
 
 def _drop(found: _Found, model: Expectation, limits: tuple[float, float]) -> bool:

@@ -38,11 +38,12 @@ def exact(value: float) -> str:
 
 
 def about(value: float) -> str:
-    """Write an expected value with three digits: 1,480; 36.2; 0.00415."""
+    """Write an expected value with three digits at most: 1,480; 36.2; 2; 0.00415."""
     if not np.isfinite(value) or value == 0.0:
         return "0" if value == 0.0 else "unknown"
     digits = 2 - int(np.floor(np.log10(abs(value))))
-    return f"{round(value, digits):,.{max(digits, 0)}f}" if digits > 0 else f"{round(value, digits):,.0f}"
+    text = f"{round(value, digits):,.{max(digits, 0)}f}"
+    return text.rstrip("0").rstrip(".") if digits > 0 else text
 
 
 def tellers(noun: str, seasonal: bool) -> str:
@@ -74,8 +75,8 @@ def unit_slip(s: Standout, when: str, noun: str, seasonal: bool, used: float | N
     """Evidence and remedy of a period, or of a lasting stretch, that is off by a power of ten."""
     power = s.factor if s.factor > 1 else float(round(1 / s.factor))
     if s.lasting:
-        change = f"{_TIMES[power]} as large as" if s.factor > 1 else f"{_PARTS[power]} of"
-        return (f"From {when} on the values are about {change} what they were before.",
+        change = f"{_TIMES[power]} as large as" if s.factor > 1 else f"{_PARTS[power]} of what they were"
+        return (f"From {when} on the values are about {change} before.",
                 "Left as it is: it cannot be told which stretch is in the right unit. Correct the other one "
                 "in the source.")
     other = f"{_PARTS[power]} of it" if s.factor > 1 else f"{_TIMES[power]} as much"
