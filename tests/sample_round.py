@@ -360,7 +360,8 @@ class _Round:
         first = self.names(self.closing - 9, 1)[0] if year else self.names(self.closing + 1, 1)[0]
         return {"scope": scope, "member": member, "window": window, "first": first,
                 "last": self.names(self.closing + count, 1)[0],
-                "baseline": float(part["baseline"].sum()) + to_date, "adjustment": float(part["adjustment"].sum()), "adjusted": centre,
+                "baseline": float(part["baseline"].sum()) + to_date, "adjustment": float(part["adjustment"].sum()),
+                "adjusted": centre,
                 **{key: max(0.0, centre + z * wide) for key, z in _Z.items()}, "last_year": last_year,
                 "actual_to_date": to_date}
 

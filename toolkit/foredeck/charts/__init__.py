@@ -25,7 +25,7 @@ _HOMES = {
     "Figure": "figure", "Picture": "pictures",
 }
 
-__all__ = list(_HOMES)  # noqa: PLE0604
+__all__ = list(_HOMES)
 
 
 def __getattr__(name: str) -> Any:

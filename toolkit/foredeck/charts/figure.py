@@ -64,10 +64,7 @@ class Figure:
     def _numbers(self) -> str:
         head = "".join(f'<th scope="col"{_number_class(i)}>{escape(str(c))}</th>'
                        for i, c in enumerate(self.table.columns))
-        body = "".join(
-            "<tr>" + "".join(f'<th scope="row">{escape(cell)}</th>' if i == 0 else f"<td{_number_class(i)}>{escape(cell)}</td>"
-                             for i, cell in enumerate(map(str, row))) + "</tr>"
-            for row in self.table.itertuples(index=False))
+        body = "".join(f"<tr>{_row([str(cell) for cell in row])}</tr>" for row in self.table.itertuples(index=False))
         name = label("numbers caption", lead=self.lead.rstrip(".,"))
         return (f'<div class="wrap" role="region" tabindex="0" aria-label="{escape(name)}"><table>'
                 f'<caption>{escape(name)}</caption><thead><tr>{head}</tr></thead><tbody>{body}</tbody></table></div>')
@@ -79,6 +76,10 @@ class Figure:
                   PLOTLY: {"data": self.data, "layout": layout,
                            "config": {"displayModeBar": False, "scrollZoom": False}}}
         return bundle, {}
+
+
+def _row(cells: list[str]) -> str:
+    return f'<th scope="row">{escape(cells[0])}</th>' + "".join(f'<td class="n">{escape(c)}</td>' for c in cells[1:])
 
 
 def _number_class(column: int) -> str:

@@ -54,7 +54,8 @@ def last_time_figure(reliability: pd.DataFrame, *, closing: str, frequency: str,
     narrow = {"scale": 0.7, "margin": {**margin, "l": axis.margin - 4, "r": 66},
               "annotations": _notes(rows, outside, axis, outer, decimals, short=True),
               "xaxis": time.ticks(first, last, 240)}
-    names = ", ".join(f"{time.name(int(r['at']))} at {number(r['actual'], decimals)}" for r in outside.to_dict("records"))
+    names = ", ".join(f"{time.name(int(r['at']))} at {number(r['actual'], decimals)}"
+                      for r in outside.to_dict("records"))
     noun = time.frequency.noun
     alt = label("last alt", n=len(rows), noun=noun, inside=len(rows) - len(outside), outer=range_label(outer),
                 outside=label("last alt outside", names=names) if names else "")

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from functools import partial
 from typing import Any
 
 import pandas as pd
@@ -18,14 +20,15 @@ GAP, GAP_SHORT = 21, 17
 """Pixels between labels; wide charts are printed at four fifths of their height."""
 
 
-def outlook(study: StudyLike, id: str = "outlook") -> Figure:
+def outlook(study: StudyLike, write: Callable[[float], str] | None = None, id: str = "outlook") -> Figure:
     """Draw the outlook of a study: see `outlook_figure`."""
     return outlook_figure(study.actuals, study.adjusted, closing=study.closing, frequency=study.frequency,
-                          unit=study.unit, levels=study.levels, previous=previous_of(study), id=id)
+                          unit=study.unit, levels=study.levels, previous=previous_of(study), write=write, id=id)
 
 
 def outlook_figure(actuals: pd.DataFrame, adjusted: pd.DataFrame, *, closing: str, frequency: str, unit: str,
-                   levels: tuple[int, ...], previous: pd.DataFrame | None = None, id: str = "outlook") -> Figure:
+                   levels: tuple[int, ...], previous: pd.DataFrame | None = None,
+                   write: Callable[[float], str] | None = None, id: str = "outlook") -> Figure:
     """Draw actuals and forecast on one axis.
 
     Parameters
@@ -36,15 +39,18 @@ def outlook_figure(actuals: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
         NaN ranges leave no block. Empty where the series is not forecast.
     previous : columns period, adjusted, or None
         what the round before said; shown where it overlaps.
+    write : function of a figure, or None
+        how forecasts are rounded and written; None writes them as the actuals are recorded.
     """
-    return _Outlook(actuals, adjusted, TimeAxis.closed_at(closing, frequency), unit, levels, previous).figure(id)
+    return _Outlook(actuals, adjusted, TimeAxis.closed_at(closing, frequency), unit, levels, previous, write).figure(id)
 
 
 class _Outlook:
     """The parts of one outlook chart."""
 
     def __init__(self, actuals: pd.DataFrame, adjusted: pd.DataFrame, time: TimeAxis, unit: str,
-                 levels: tuple[int, ...], previous: pd.DataFrame | None) -> None:
+                 levels: tuple[int, ...], previous: pd.DataFrame | None,
+                 write: Callable[[float], str] | None) -> None:
         self.time, self.unit = time, unit
         self.outer, self.inner = outer_and_inner(levels)
         wide, self.narrow_count = SHOWN[time.frequency]
@@ -58,16 +64,14 @@ class _Outlook:
             before = previous.assign(at=time.places(previous["period"]))
             self.before = before[(before["at"] >= self.first) & (before["at"] <= self.last)]
         self.axis = self._axis()
-        self.decimals = decimals_for([*self.past["used"], *self.past["raw"]])
+        self.write = partial(number, decimals=decimals_for([*self.past["used"], *self.past["raw"]]))
+        self.rounded = write or self.write
 
     def _axis(self) -> ValueAxis:
         values = [*self.past["used"], *self.before["adjusted"], *self.ahead["adjusted"]]
         if len(self.ahead):
             values += [*self.ahead[f"lower_{self.outer}"], *self.ahead[f"upper_{self.outer}"]]
         return value_axis(values, room=0.13)
-
-    def write(self, value: float) -> str:
-        return number(value, self.decimals)
 
     def figure(self, id: str) -> Figure:
         pixels = HEIGHT - TOP - FOOT
@@ -100,7 +104,7 @@ class _Outlook:
             traces.append(blocks(self.ahead["at"], self.ahead[f"lower_{self.inner}"],
                                  self.ahead[f"upper_{self.inner}"], role("range50")))
         traces.append(scatter(self.past["at"], self.past["used"], self._form("actual"), actual))
-        said = [f"{self.time.name(int(k))}: {label('said last round')} {self.write(v)}"
+        said = [f"{self.time.name(int(k))}: {label('said last round')} {self.rounded(v)}"
                 for k, v in zip(self.before["at"], self.before["adjusted"], strict=True)]
         size = min(15.0, 0.8 * self._pixels_a_period())
         bar = {"symbol": "line-ew-open", "size": size, "color": colour("ochre"),
@@ -121,10 +125,10 @@ class _Outlook:
     def _said(self) -> list[str]:
         texts = []
         for row in self.ahead.to_dict("records"):
-            text = f"{self.time.name(row['at'])}: {label('forecast')} {self.write(row['adjusted'])}"
+            text = f"{self.time.name(row['at'])}: {label('forecast')} {self.rounded(row['adjusted'])}"
             for level in filter(None, (self.inner, self.outer)):
-                text += (f"<br>{level_label(level)} {self.write(row[f'lower_{level}'])}"
-                         f" to {self.write(row[f'upper_{level}'])}")
+                text += (f"<br>{level_label(level)} {self.rounded(row[f'lower_{level}'])}"
+                         f" to {self.rounded(row[f'upper_{level}'])}")
             texts.append(text)
         return texts
 
@@ -154,8 +158,8 @@ class _Outlook:
         """The direct labels at the right end, pushed apart."""
         end = self.ahead.iloc[-1]
         wanted: list[tuple[float, str, str]] = [(float(end["adjusted"]), label("forecast"), "plum")]
-        for level in filter(None, (self.outer, self.inner)):
-            wanted.append((float(end[f"upper_{level}"]), level_label(level, short), "ink2"))
+        wanted += [(float(end[f"upper_{level}"]), level_label(level, short), "ink2")
+                   for level in (self.outer, self.inner) if level is not None]
         if len(self.before):
             said = label("said") if short else label("said last round")
             wanted.append((float(self.before.sort_values("at")["adjusted"].iloc[-1]), said, "ochre"))
@@ -168,15 +172,16 @@ class _Outlook:
         """Name the highest forecast, where it stands clear of the close line's own words."""
         if len(self.ahead) < 3 or self.ahead["adjusted"].nunique() == 1:
             return []
-        top = self.ahead.loc[self.ahead["adjusted"].idxmax()]
+        top = self.ahead.iloc[int(self.ahead["adjusted"].to_numpy().argmax())]
         edge = top[f"upper_{self.outer}"]
         at, y = int(top["at"]), float(top["adjusted"] if edge != edge else edge)
         anchor = "left" if at <= 2 else "right" if at == self.last else "center"
         name = self.time.name(at).split(" ", maxsplit=1)[0]
-        return [note(at, y, f"{name} {self.write(top['adjusted'])}", "plum", xanchor=anchor, yanchor="bottom", yshift=3)]
+        text = f"{name} {self.rounded(top['adjusted'])}"
+        return [note(at, y, text, "plum", xanchor=anchor, yanchor="bottom", yshift=3)]
 
     def _actual_note(self, begin: int, short: bool) -> list[dict[str, Any]]:
-        """Name the line of actuals at its highest point, where the ground above is empty."""
+        """Name the line of actuals at a peak, where the ground above is empty; else under a trough."""
         shown = self.past[(self.past["at"] >= begin) & self.past["used"].notna()]
         if shown.empty:
             return []
@@ -184,12 +189,19 @@ class _Outlook:
         reach = (50 if short else 100) * (self.last - begin + 1) / (230 if short else 690)
         mended = shown.loc[shown["repaired"], "at"]
         clear = shown[[not (mended - at).abs().lt(reach).any() for at in shown["at"]]]
-        top = (clear if len(clear) else shown).loc[lambda t: t["used"].idxmax()]
+        around = shown["used"].rolling(3, center=True, min_periods=2)
+        peaks = clear[clear["used"] >= around.max().loc[clear.index]]
+        troughs = clear[clear["used"] <= around.min().loc[clear.index]]
+        under = peaks.empty and not troughs.empty
+        high = peaks if len(peaks) else shown
+        top = (troughs.iloc[int(troughs["used"].to_numpy().argmin())] if under
+               else high.iloc[int(high["used"].to_numpy().argmax())])
         at = int(top["at"])
         text = label("actual") if short else f"{label('actual')}, {self.time.name(at)}: {self.write(top['used'])}"
         third = (at - begin) / max(1, -begin)
         anchor = "left" if third < 0.25 else "right" if third > 0.6 else "center"
-        return [note(at, float(top["used"]), text, "ink", xanchor=anchor, yanchor="bottom", yshift=5)]
+        return [note(at, float(top["used"]), text, "ink", xanchor=anchor, yanchor="top" if under else "bottom",
+                     yshift=-5 if under else 5)]
 
     def _repair_notes(self, begin: int) -> list[dict[str, Any]]:
         """Label the repairs in sight, on the side away from the line; the newest four only."""
@@ -214,18 +226,20 @@ class _Outlook:
         first, closing = self.time.name(self.first), self.time.name(0)
         if not len(self.ahead):
             return f"{label('actual').capitalize()}s {first} to {closing}, {self.unit}."
-        lead, top = self.ahead.iloc[0], self.ahead.loc[self.ahead["adjusted"].idxmax()]
+        lead, top = self.ahead.iloc[0], self.ahead.iloc[int(self.ahead["adjusted"].to_numpy().argmax())]
         lower, upper = lead[f"lower_{self.outer}"], lead[f"upper_{self.outer}"]
-        ranged = "" if lower != lower else label("strip range", level=level_label(self.outer), lower=self.write(lower),
-                                                  upper=self.write(upper))
+        ranged = ""
+        if lower == lower:
+            ranged = label("strip range", level=level_label(self.outer), lower=self.rounded(lower),
+                           upper=self.rounded(upper))
         return label("outlook alt", first=first, closing=closing, end=self.time.name(self.last),
-                     next=self.time.name(int(lead["at"])), value=self.write(lead["adjusted"]), unit=self.unit,
-                     range=ranged, top=self.write(top["adjusted"]), top_when=self.time.name(int(top["at"])))
+                     next=self.time.name(int(lead["at"])), value=self.rounded(lead["adjusted"]), unit=self.unit,
+                     range=ranged, top=self.rounded(top["adjusted"]), top_when=self.time.name(int(top["at"])))
 
     def _table(self) -> pd.DataFrame:
         rows = [[self.time.name(r["at"]), self.write(r["used"]), "", "", ""] for r in self.past.to_dict("records")]
-        rows += [[self.time.name(r["at"]), "", self.write(r["adjusted"]),
-                  self.write(r[f"lower_{self.outer}"]), self.write(r[f"upper_{self.outer}"])]
+        rows += [[self.time.name(r["at"]), "", self.rounded(r["adjusted"]),
+                  self.rounded(r[f"lower_{self.outer}"]), self.rounded(r[f"upper_{self.outer}"])]
                  for r in self.ahead.to_dict("records")]
         heads = [label("period"), label("actual").capitalize(), label("forecast").capitalize(),
                  label("lower", level=level_label(self.outer).capitalize()), label("upper")]

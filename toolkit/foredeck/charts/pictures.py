@@ -60,14 +60,14 @@ def small_picture_of(name: str, actuals: pd.DataFrame, adjusted: pd.DataFrame, *
     coming = coming.assign(at=time.places(coming["period"]))
     values = [*known["used"], *coming["adjusted"], *coming[f"upper_{outer}"], *coming[f"lower_{outer}"], 0.0]
     finite = [v for v in values if math.isfinite(v)]
-    low, high = min(finite), max(finite) or 1.0
-    step = (width - 8) / (past + ahead)
+    low, high = min(finite), max(finite)
+    step, reach = (width - 8) / (past + ahead), float(high - low) or 1.0
 
     def x(at: float) -> float:
         return 4 + (at + past - 0.5) * step
 
     def y(value: float) -> float:
-        return height - 3 - (value - low) / ((high - low) or 1.0) * (height - 8)
+        return height - 3 - (value - low) / reach * (height - 8)
 
     parts = [f'<line x1="0" x2="{width}" y1="{y(0):.1f}" y2="{y(0):.1f}" stroke="{token("hair")}" {_STILL}/>']
     for row in coming.to_dict("records"):
@@ -80,8 +80,7 @@ def small_picture_of(name: str, actuals: pd.DataFrame, adjusted: pd.DataFrame, *
     parts.append(f'<line x1="{x(0.5):.1f}" x2="{x(0.5):.1f}" y1="0" y2="{height}" stroke="{token("ink2")}" {_STILL}/>')
     parts += [_line(piece, token("ink"), 1.5) for piece in _pieces(known["at"], known["used"], x, y)]
     parts += [_line(piece, token("plum"), 2) for piece in _pieces(coming["at"], coming["adjusted"], x, y)]
-    svg = (f'<svg class="small" viewBox="0 0 {width} {height}" preserveAspectRatio="none" width="100%" height="{height}" '
-           f'aria-hidden="true" focusable="false">{"".join(parts)}</svg>')
+    svg = _svg("small", width, height, parts)
     return Picture(svg, _small_alt(name, known, coming, outer, unit))
 
 
@@ -149,5 +148,10 @@ def totals_bar(value: float, outer: tuple[float, float], inner: tuple[float, flo
                          f'fill="{token(fill)}" stroke="{token("plum_edge")}" {_STILL}/>')
     parts.append(f'<line x1="{x(value):.1f}" x2="{x(value):.1f}" y1="3" y2="23" stroke="{token("plum")}" '
                  f'stroke-width="3.5" {_STILL}/>')
-    return (f'<svg class="bar" viewBox="0 0 {width} {height}" preserveAspectRatio="none" width="100%" height="{height}" '
-            f'aria-hidden="true" focusable="false">{"".join(parts)}</svg>')
+    return _svg("bar", width, height, parts)
+
+
+def _svg(name: str, width: int, height: int, parts: list[str]) -> str:
+    """Write a picture that is as wide as its place; lines keep their width."""
+    return (f'<svg class="{name}" viewBox="0 0 {width} {height}" preserveAspectRatio="none" width="100%" '
+            f'height="{height}" aria-hidden="true" focusable="false">{"".join(parts)}</svg>')

@@ -84,7 +84,8 @@ def season_figure(actuals: pd.DataFrame, adjusted: pd.DataFrame, *, frequency: s
     line = role("actual")
     line["marker"]["size"] = 6 if length <= 12 else 3
     for rows, form, what in ((earlier, open_circle, "season earlier"), (newest, line, "season latest")):
-        said = [f"{names[int(p)]}, {label(what)}: {number(v)}" for p, v in zip(rows["position"], rows["value"], strict=True)]
+        said = [f"{names[int(p)]}, {label(what)}: {number(v)}"
+                for p, v in zip(rows["position"], rows["value"], strict=True)]
         data.append(scatter(rows["position"], rows["value"], form, said))
     wanted = [(float(newest["value"].iloc[-1]), label("season latest"), "ink"),
               (float(earlier[earlier["position"] == length - 1]["value"].mean()), label("season earlier"), "ink2")]
@@ -104,18 +105,20 @@ def season_figure(actuals: pd.DataFrame, adjusted: pd.DataFrame, *, frequency: s
     narrow = {"scale": 0.8, "margin": {**margin, "l": axis.margin - 4, "r": 92},
               "xaxis": {"tickvals": list(range(0, length, 13 if length > 12 else 1)), "ticktext": short}}
     return Figure(id, data, layout, narrow, label("season lead", noun=every.noun),
-                  label("season rest", season="year"), _alt(at, forecast, newest, names), _table(past, at, forecast, names))
+                  label("season rest" if drawn else "season rest past"), _alt(at, forecast, newest, names),
+                  _table(past, at, forecast, names))
 
 
 def _blocks(at: list[int], forecast: list[float]) -> dict[str, Any]:
     return {"type": "bar", "x": at, "base": [100] * len(at), "y": numbers(v - 100 for v in forecast), "width": 0.86,
-            "hoverinfo": "skip", "marker": {"color": colour("plum90"), "line": {"color": colour("plum_edge"), "width": 1}}}
+            "hoverinfo": "skip", **role("range90")}
 
 
 def _alt(at: list[int], forecast: list[float], newest: pd.DataFrame, names: list[str]) -> str:
     pairs = list(zip(forecast, at, strict=True)) or list(zip(newest["value"], newest["position"], strict=True))
     (high, top), (low, bottom) = max(pairs), min(pairs)
-    return label("season alt", top=names[int(top)], top_value=number(high), low=names[int(bottom)], low_value=number(low))
+    return label("season alt", top=names[int(top)], top_value=number(high), low=names[int(bottom)],
+                 low_value=number(low))
 
 
 def _table(past: pd.DataFrame, at: list[int], forecast: list[float], names: list[str]) -> pd.DataFrame:
@@ -124,6 +127,6 @@ def _table(past: pd.DataFrame, at: list[int], forecast: list[float], names: list
     said = dict(zip(at, forecast, strict=True))
     cells = [[names[int(p)], *[number(v) for v in row], *([number(said[int(p)])] if said else [])]
              for p, row in zip(table.index, table.to_numpy(), strict=True)]
-    heads = [label("season latest") if b == 0 else f"{b} earlier" for b in table.columns]
+    heads = [label("season latest") if b == 0 else label("season back", count=b) for b in map(int, table.columns)]
     return pd.DataFrame(cells, columns=["", *[h.capitalize() for h in heads],
                                         *([label("season used").capitalize()] if said else [])])

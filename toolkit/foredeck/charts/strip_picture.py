@@ -19,13 +19,16 @@ Place = Callable[[float], float]
 WIDTHS = {"wide": 1064, "mid": 660, "narrow": 358}
 
 
-def strip(study: StudyLike, write: Callable[[float], str] | None = None) -> Picture | None:
+def strip(study: StudyLike, write: Callable[[float], str] | None = None,
+          edge: Callable[[float], str] | None = None) -> Picture | None:
     """Draw the strip of a study's next period; None where it has no forecast or no range.
 
     Parameters
     ----------
     write : function of a figure, or None
         how forecasts are rounded and written; None writes them as the actuals are recorded.
+    edge : function of a figure, or None
+        the same for the ends of ranges; None for `write`.
     """
     if study.adjusted.empty:
         return None
@@ -43,20 +46,21 @@ def strip(study: StudyLike, write: Callable[[float], str] | None = None) -> Pict
     inside = (float(row[f"lower_{inner}"]), float(row[f"upper_{inner}"])) if inner is not None else None
     return strip_of(float(row["adjusted"]), (float(row[f"lower_{outer}"]), float(row[f"upper_{outer}"])), inside,
                     when=time.name(time.place(str(row["period"]))), past_name=time.name(at), past=past, said=said,
-                    outer_level=outer, unit=study.unit, write=write)
+                    outer_level=outer, unit=study.unit, write=write, edge=edge)
 
 
 def strip_of(value: float, outer: tuple[float, float], inner: tuple[float, float] | None, *, when: str,
              past_name: str, past: float, said: float, outer_level: int, unit: str,
-             write: Callable[[float], str] | None = None) -> Picture | None:
+             write: Callable[[float], str] | None = None,
+             edge: Callable[[float], str] | None = None) -> Picture | None:
     """Draw forecast, ranges, last year and last round of one period, for three page widths.
 
     Parameters
     ----------
     past, said : float
         the same period a year before; what the last round said. NaN leaves them out.
-    write : function of a figure, or None
-        how forecasts are rounded and written.
+    write, edge : function of a figure, or None
+        how forecasts and ends of ranges are rounded and written.
 
     Returns
     -------
@@ -65,13 +69,15 @@ def strip_of(value: float, outer: tuple[float, float], inner: tuple[float, float
     """
     if not all(math.isfinite(v) for v in (value, *outer)):
         return None
-    decimals = decimals_for([past, *outer] if math.isfinite(past) and past != round(past) else [round(outer[1])])
+    decimals = decimals_for([past] if math.isfinite(past) else [*outer])
     known = partial(number, decimals=decimals)
-    one = _Strip(value, outer, inner, past_name, past, said, outer_level, unit, write or known, known)
+    one = _Strip(value, outer, inner, past_name, past, said, outer_level, unit, write or known,
+                 edge or write or known, known)
     svg = "".join(one.svg(width, name) for name, width in WIDTHS.items())
     before = f"; {label('strip said', value=one.write(said))}" if math.isfinite(said) else ""
     gone = f"; {past_name}: {one.known(past)}" if math.isfinite(past) else ""
-    ranged = label("strip range", level=level_label(outer_level), lower=one.write(outer[0]), upper=one.write(outer[1]))
+    ranged = label("strip range", level=level_label(outer_level), lower=one.edge(outer[0]),
+                   upper=one.edge(outer[1]))
     return Picture(svg, label("strip alt", when=when, value=one.write(value), unit=unit, range=ranged, before=before,
                               past=gone))
 
@@ -89,6 +95,7 @@ class _Strip:
     level: int
     unit: str
     write: Callable[[float], str]
+    edge: Callable[[float], str]
     known: Callable[[float], str]
 
     def svg(self, width: int, name: str) -> str:
@@ -111,9 +118,18 @@ class _Strip:
         middle = y0 + tall / 2
         parts.append(f'<path d="M{x(self.value):.1f} {middle - 9:.1f}l9 9l-9 9l-9 -9z" fill="{token("paper")}" '
                      f'stroke="{token("plum")}" stroke-width="2.5"/>')
-        parts.append(_text(x(self.value) + 14, middle + 4.5, self.write(self.value), "plum", weight=650))
+        parts.append(self._figure(x, middle))
         return (f'<svg class="strip {name}" viewBox="0 0 {width} {height - foot + 14}" aria-hidden="true" '
                 f'focusable="false">{"".join(parts)}</svg>')
+
+    def _figure(self, x: Place, y: float) -> str:
+        """Write the forecast beside its mark, on the left where another mark stands on the right."""
+        text, place = self.write(self.value), x(self.value)
+        marks = [x(v) - place for v in (self.past, self.said) if math.isfinite(v)]
+        reach = 22 + LETTER * len(text)
+        left = any(8 < m < reach for m in marks) and not any(-reach < m < -8 for m in marks)
+        return _text(place - 14 if left else place + 14, y + 4.5, text, "plum", anchor="end" if left else "start",
+                     weight=650)
 
     def _scale(self, axis: ValueAxis, x: Place, y: float, width: int) -> str:
         parts = [f'<line x1="0" x2="{width}" y1="{y}" y2="{y}" stroke="{token("rule")}"/>']
@@ -136,7 +152,7 @@ class _Strip:
         edge = x(self.inner[0]) if self.inner else x(self.value) - 12
         far = x(self.inner[1]) if self.inner else x(self.value) + 60
         level = level_label(self.level, short=not large)
-        span = f"{self.write(self.outer[0])} to {self.write(self.outer[1])}"
+        span = f"{self.edge(self.outer[0])} to {self.edge(self.outer[1])}"
         parts = []
         reach = left + 14 + LETTER * len(level)
         if reach < edge and not any(left < x(v) < reach + 8 for v in (self.past, self.said) if math.isfinite(v)):

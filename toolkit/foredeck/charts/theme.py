@@ -22,7 +22,7 @@ def _theme() -> dict[str, Any]:
 
 def template() -> dict[str, Any]:
     """Return a copy of the plotly template of every chart."""
-    return copy.deepcopy(_theme()["template"])  # type: ignore[no-any-return]
+    return copy.deepcopy(_theme()["template"])
 
 
 def light() -> dict[str, str]:

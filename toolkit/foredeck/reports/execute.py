@@ -75,7 +75,8 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
 
 
 def _failed(notebook: Path, what: str, do: str) -> ReportError:
-    return ReportError(f"{notebook.name}: {what}", where=str(notebook), allowed="notebooks whose every cell runs", do=do)
+    return ReportError(f"{notebook.name}: {what}", where=str(notebook), allowed="notebooks whose every cell runs",
+                       do=do)
 
 
 def _refuse_unknown(notebook: Path, parameters: Mapping[str, Any]) -> None:

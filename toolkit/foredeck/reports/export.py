@@ -35,7 +35,7 @@ BESIDE = "plotly.min.js"
 """Name of the file that pages share when plotly.js stands beside them."""
 
 
-class FinishPage(Preprocessor):  # type: ignore[misc]
+class FinishPage(Preprocessor):
     """Make an executed notebook into the body of a page.
 
     Cells and inputs are left out by their tags (the notebook on disk keeps them), sections are opened and
@@ -78,7 +78,9 @@ class FinishPage(Preprocessor):  # type: ignore[misc]
         """Return the script element of plotly.js; empty for a page without charts."""
         if not charts:
             return ""
-        return f'<script src="{BESIDE}"></script>' if self.plotly_js == "beside" else f"<script>{plotly_text()}</script>"
+        if self.plotly_js == "beside":
+            return f'<script src="{BESIDE}"></script>'
+        return f"<script>{plotly_text()}</script>"
 
 
 def _checked(html: str, charts: list[str], where: str) -> str:
@@ -104,9 +106,10 @@ def refuse_failed(nb: NotebookNode, where: str) -> None:
     for number, cell in enumerate(nb.cells, start=1):
         for output in cell.get("outputs", []):
             if output.output_type == "error":
-                raise ReportError(f"cell {number} of the notebook failed: {output.ename}: {output.evalue}", where=where,
-                                  allowed="notebooks whose every cell ran", do="mend the cause and run the notebook again",
-                                  cell=number)
+                raise ReportError(
+                    f"cell {number} of the notebook failed: {output.ename}: {output.evalue}", where=where,
+                    allowed="notebooks whose every cell ran", do="mend the cause and run the notebook again",
+                    cell=number)
 
 
 def _tags(cell: NotebookNode) -> set[str]:
@@ -194,8 +197,8 @@ def _around(cell: NotebookNode, before: str = "", after: str = "") -> None:
 
 def _running_css(running: Iterable[str]) -> str:
     """Write the running head of printed pages as CSS strings; every unusual character by its code."""
-    left, right = (
-        "".join(c if c.isascii() and (c.isalnum() or c in " ,.:-") else f"\\{ord(c):x} " for c in words) for words in running)
+    left, right = ("".join(c if c.isascii() and (c.isalnum() or c in " ,.:-") else f"\\{ord(c):x} " for c in words)
+                   for words in running)
     return (f'@page{{@top-left{{content:"{left}"}}@top-right{{content:"{right}"}}}}'
             "@page:first{@top-left{content:none}@top-right{content:none}}")
 
@@ -204,7 +207,8 @@ def _running_css(running: Iterable[str]) -> str:
 def _exporter(template_name: str, plotly_js: str, folder: str) -> Any:
     config = Config()
     config.FinishPage.plotly_js = plotly_js
-    return HTMLExporter(config=config, template_name=template_name, extra_template_basedirs=[folder])
+    return HTMLExporter(  # type: ignore[no-untyped-call]
+        config=config, template_name=template_name, extra_template_basedirs=[folder])
 
 
 def export_html(notebook: Path | str, out: Path | str, template_name: str = "foredeck-report",

@@ -32,6 +32,16 @@ def paragraph(text: str, css: str = "", lead: str = "") -> str:
     return f"<p{form}>{f'<b>{escape(lead)}</b> ' if lead else ''}{escape(text)}</p>"
 
 
+def _show(html: str, plain: str, facts: dict[str, Any]) -> None:
+    _publish({"text/html": html, "text/plain": plain}, facts)
+
+
+def _publish(bundle: dict[str, Any], facts: dict[str, Any]) -> None:
+    from IPython.display import display
+
+    display(bundle, raw=True, metadata={KEY: facts})  # type: ignore[no-untyped-call]
+
+
 @dataclass(frozen=True)
 class Section:
     """One section of a page.
@@ -50,19 +60,14 @@ class Section:
     parts: Sequence[Part]
 
     def _ipython_display_(self) -> None:
-        from IPython.display import publish_display_data
-
-        head = f"<h2>{escape(self.title)}</h2>" + paragraph(self.sub)
-        publish_display_data(data={"text/html": head, "text/plain": self.title}, metadata={
-            KEY: {"kind": "section", "id": self.id, "title": self.title, "sub": self.sub}})
+        _show(f"<h2>{escape(self.title)}</h2>{paragraph(self.sub)}", self.title,
+              {"kind": "section", "id": self.id, "title": self.title, "sub": self.sub})
         for part in self.parts:
             if isinstance(part, Figure):
                 bundle, _ = part._repr_mimebundle_()
-                publish_display_data(data=bundle, metadata={KEY: {"kind": "chart", "id": part.id}})
+                _publish(bundle, {"kind": "chart", "id": part.id})
             elif part:
-                html = part.html() if isinstance(part, Picture) else part
-                publish_display_data(data={"text/html": html, "text/plain": self.title},
-                                     metadata={KEY: {"kind": "part"}})
+                _show(part.html() if isinstance(part, Picture) else part, self.title, {"kind": "part"})
 
 
 @dataclass(frozen=True)
@@ -104,7 +109,4 @@ class Head:
                 "link": list(self.link) if self.link else None, "language": self.language}
 
     def _ipython_display_(self) -> None:
-        from IPython.display import publish_display_data
-
-        publish_display_data(data={"text/html": self.html(), "text/plain": self.heading},
-                             metadata={KEY: self.facts()})
+        _show(self.html(), self.heading, self.facts())

@@ -8,9 +8,10 @@ from html.parser import HTMLParser
 
 from foredeck.errors import ReportError
 
-_LOADED = {"script": ("src",), "img": ("src", "srcset"), "link": ("href",), "iframe": ("src",), "source": ("src", "srcset"),
-           "video": ("src", "poster"), "audio": ("src",), "object": ("data",), "embed": ("src",), "image": ("href", "xlink:href"),
-           "use": ("href", "xlink:href"), "input": ("src",), "form": ("action",)}
+_LOADED = {
+    "script": ("src",), "img": ("src", "srcset"), "link": ("href",), "iframe": ("src",), "source": ("src", "srcset"),
+    "video": ("src", "poster"), "audio": ("src",), "object": ("data",), "embed": ("src",), "input": ("src",),
+    "image": ("href", "xlink:href"), "use": ("href", "xlink:href"), "form": ("action",)}
 """Attributes by which an element fetches something (links that a reader follows are not among them)."""
 _VOID = {"area", "base", "br", "col", "embed", "hr", "img", "input", "link", "meta", "source", "track", "wbr"}
 _WITHOUT_TEXT = {"svg", "img", "table"}

@@ -14,6 +14,9 @@ from foredeck.wording.catalogue import upper_first
 from foredeck.wording.dates import long_name
 from foredeck.wording.facts import facts_of
 
+LONG = 14
+"""Letters from which the big figure of an answer is set smaller, so that it stays in its column."""
+
 
 def head(study: Study, link: tuple[str, str] | None = None) -> Head:
     """Make the head of the page.
@@ -26,7 +29,7 @@ def head(study: Study, link: tuple[str, str] | None = None) -> Head:
     facts = facts_of(study)
     when = long_name(study.closing, facts.frequency)
     parts: list[str | Picture] = [answers_html(answers(facts))] if facts.forecast else []
-    picture = strip(study, write=facts.edges.text)
+    picture = strip(study, write=facts.figures.text, edge=facts.edges.text)
     if picture is not None:
         parts.append(f'<figure class="strip-figure"><figcaption class="vh">'
                      f"{escape(text('strip caption', when=upper_first(long_name(facts.next_period, facts.frequency))))}"
@@ -46,6 +49,7 @@ def answers_html(given: list[Answer]) -> str:
         big = f'<span class="plum">{escape(answer.big)}</span>' if answer.expected else escape(answer.big)
         small = f" <small>{escape(answer.small)}</small>" if answer.small else ""
         lead = f"<b>{escape(answer.lead)}</b> " if answer.lead else ""
-        rows.append(f'<div><dt>{escape(answer.question)}</dt><dd class="big">{big}{small}</dd>'
+        form = "big long" if len(answer.big) > LONG else "big"
+        rows.append(f'<div><dt>{escape(answer.question)}</dt><dd class="{form}">{big}{small}</dd>'
                     f"<dd>{lead}{escape(answer.text)}</dd></div>")
     return f'<dl class="answers">{"".join(rows)}</dl>'

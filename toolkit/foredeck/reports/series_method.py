@@ -77,7 +77,8 @@ def _methods(study: Study, facts: SeriesFacts) -> str:
     rows = []
     for row in study.eligibility.to_dict("records"):
         weight, missed = float(part.get(row["method"], 0.0)), float(miss.get(row["method"], math.nan))
-        reason = "" if weight > 0 else upper_first(str(row["reason"] or text("not weighted")))
+        permitted = text("not weighted" if facts.forecast else "no forecast")
+        reason = "" if weight > 0 else upper_first(str(row["reason"] or permitted))
         rows.append({"method": method_name(str(row["method"])), "part": percent(weight) if weight > 0 else "",
                      "miss": Rounding.of_two_figures(missed).text(missed), "reason": reason, "weight": -weight})
     frame = pd.DataFrame(rows).sort_values(["weight", "method"], kind="stable")

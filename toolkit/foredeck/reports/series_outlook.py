@@ -37,8 +37,9 @@ def outlook(study: Study) -> Section | None:
         lead=words("outlook table", count=count, plural=plural if count > 1 else facts.frequency.noun,
                    unit=study.unit),
         rest=words("outlook table note"))
-    return Section("outlook", words("outlook title"), words("outlook sub", count=count, plural=plural if count > 1 else facts.frequency.noun), [
-        say(outlook_words(facts, study.adjusted, study.actuals)), outlook_chart(study), made,
+    sub = words("outlook sub", count=count, plural=plural if count > 1 else facts.frequency.noun)
+    return Section("outlook", words("outlook title"), sub, [
+        say(outlook_words(facts, study.adjusted, study.actuals)), outlook_chart(study, write=facts.figures.text), made,
         paragraph(note, "note"), paragraph(landing_words(facts, study.totals))])
 
 
@@ -105,7 +106,7 @@ def _totals(study: Study, facts: SeriesFacts) -> list[dict[str, Any]]:
         if study.previous is not None:
             said = study.previous.adjusted[study.previous.adjusted["period"].isin(inside)]
             before = float(said["adjusted"].sum()) if len(said) == len(inside) else math.nan
-        names = {"first": long_name(str(row["first"]), facts.frequency), "last": long_name(str(row["last"]), facts.frequency)}
+        names = {k: long_name(str(row[k]), facts.frequency) for k in ("first", "last")}
         short = {k: short_name(str(row[k]), facts.frequency).split(" ")[0] for k in ("first", "last")}
         made: dict[str, Any] = {
             "period": Cell(upper_first(text("together", **names)), narrow=text("together short", **short)),

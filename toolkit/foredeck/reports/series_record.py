@@ -14,6 +14,7 @@ from foredeck.reports.page_texts import text
 from foredeck.study import Study
 from foredeck.tables.html import Cell, Column, pairs, table
 from foredeck.wording.catalogue import say as words
+from foredeck.wording.catalogue import upper_first
 from foredeck.wording.dates import position_names, short_name, year_and_position
 from foredeck.wording.facts import SeriesFacts, facts_of
 from foredeck.wording.levels import outside_words, range_name
@@ -28,10 +29,9 @@ def why_not(study: Study) -> Section | None:
     facts = facts_of(study)
     if facts.forecast:
         return None
-    parts: list[Part] = [say(words("why not say", name=study.name, reason=facts.reason))]
+    parts: list[Part] = [say(words("why not say", reason=upper_first(facts.reason)))]
     if study.actuals["used"].notna().any():
         parts.append(outlook_chart(study))
-    parts.append(paragraph(words("why not next")))
     return Section("why-not", words("why not title"), words("why not sub"), parts)
 
 
@@ -117,7 +117,8 @@ def glossary(study: Study) -> Section:
     facts = facts_of(study)
     noun, plural = facts.frequency.noun, facts.frequency.plural
     outside, _ = outside_words(facts.outer, facts.frequency)
-    told = {"range": range_name(facts.outer), "outside": outside[0].lower() + outside[1:], "noun": noun, "plural": plural}
+    told = {"range": range_name(facts.outer), "outside": outside[0].lower() + outside[1:], "noun": noun,
+            "plural": plural}
     keys = ("forecast", "range", "baseline", "round", "miss", "tried", "finding", "blend")
     terms = "".join(f"<div><dt>{escape(words(f'word {k}'))}</dt><dd>{escape(words(f'means {k}', **told))}</dd></div>"
                     for k in keys)

@@ -103,7 +103,8 @@ def findings(study: Study) -> Section:
         shown = [_finding(row, facts) for row in rows.to_dict("records")]
         parts.append(table(
             pd.DataFrame(shown), [
-                Column("period", text(f"period {facts.frequency.value}")), Column("finding", text("finding"), css="txt"),
+                Column("period", text(f"period {facts.frequency.value}")),
+                Column("finding", text("finding"), css="txt"),
                 Column("raw", text("raw"), css="n"), Column("used", text("used"), css="n green"),
                 Column("remedy", text("remedy"), css="txt")],
             lead=text("findings lead"), rest=text("findings rest"), stack=True))

@@ -110,8 +110,8 @@ def table(frame: pd.DataFrame, columns: Sequence[Column], *, lead: str, rest: st
     if lacking:
         raise ShapeError(f"the table {lead!r} lacks {', '.join(lacking)}", allowed=", ".join(map(str, frame.columns)),
                          do="give the frame these columns", columns=lacking)
-    role = (lambda name: f' role="{name}"') if stack else (lambda name: "")
-    heads = "".join(f'<th scope="col"{role("columnheader")}{_class(c.css)}>{escape(c.head).replace(chr(10), "<br>")}</th>'
+    role = _named_role if stack else _no_role
+    heads = "".join(f'<th scope="col"{role("columnheader")}{_class(c.css)}>{Cell(c.head).html()}</th>'
                     for c in columns)
     values = frame[[c.name for c in columns]].to_dict("split", index=False)["data"]
     rows = "".join(_row(row, columns, role, total=k in sums, stack=stack) for k, row in enumerate(values))
@@ -120,6 +120,15 @@ def table(frame: pd.DataFrame, columns: Sequence[Column], *, lead: str, rest: st
     return (f'<div class="wrap" role="region" tabindex="0" aria-label="{escape(lead)}"><table{form}>'
             f'<caption>{caption}</caption><thead{role("rowgroup")}><tr{role("row")}>{heads}</tr></thead>'
             f'<tbody{role("rowgroup")}>{rows}</tbody></table></div>')
+
+
+def _named_role(name: str) -> str:
+    """A table whose parts are displayed as blocks loses its roles unless they are written out."""
+    return f' role="{name}"'
+
+
+def _no_role(name: str) -> str:
+    return ""
 
 
 def _row(row: Sequence[Any], columns: Sequence[Column], role: Callable[[str], str], total: bool, stack: bool) -> str:

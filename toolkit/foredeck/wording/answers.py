@@ -30,7 +30,7 @@ class Answer:
 def headline(facts: SeriesFacts) -> str:
     """Say in one sentence what to expect, and what moved it."""
     if not facts.forecast:
-        return say("headline not forecast", name=facts.name, reason=facts.reason) + "."
+        return say("headline not forecast", name=facts.name) + "."
     when, value = near_name(facts.next_period, facts.frequency), facts.figures.text(facts.ahead.value)
     if facts.intermittent:
         return say("headline intermittent", value=value, unit=facts.unit, when=when,

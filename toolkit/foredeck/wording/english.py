@@ -40,7 +40,7 @@ _HEAD = {
     "headline surprise below": "{last} came in {miss} below what was said",
     "headline adjusted": "an adjustment of {size} is included",
     "headline because": ": {why}", "headline and": ", and ",
-    "headline not forecast": "{name} is not forecast: {reason}",
+    "headline not forecast": "No forecast for {name}",
     "ask how many": "How many in {when}?",
     "ask how sure": "How sure is that?",
     "ask last year": "Against last year?",
@@ -115,19 +115,22 @@ _SECTIONS = {
     "outlook landing year": "The year before came to {value}.",
     "outlook table": "The next {count} {plural}, {unit}.",
     "outlook table note": "Rounded to what the ranges support. Left of the line: known; right: expected.",
-    "outlook totals note": "Lines for several {plural} are not the sum of the ranges above them: good and bad {plural} partly "
+    "outlook totals note": "Lines for several {plural} are not the sum of the ranges above them: good and bad "
+        "{plural} partly "
                            "cancel, so several together are surer than each one.",
     "outlook no totals": "Ranges of single {plural} do not add up to the range of several.",
     "trust title": "How far to trust it",
     "trust sub": "Tried from {origins} past {plural}, each time with only what was known then",
     "trust say": "One {noun} ahead the forecast typically misses by {miss} {unit}.",
-    "trust say against": "One {noun} ahead the forecast typically misses by {miss} {unit}, against {other} for “{benchmark}”.",
+    "trust say against": "One {noun} ahead the forecast typically misses by {miss} {unit}, against {other} for "
+        "“{benchmark}”.",
     "trust better all": "It stays ahead at every distance tried.",
     "trust better some": "It is ahead at {better} of {all} distances tried.",
     "trust worse all": "“{benchmark}” has been the better guide at every distance tried: ask what the forecast adds.",
     "trust range": "{inside} of {n} actuals fell inside the {range}, where about {expected} should.",
     "trust range few": "That is {fewer} fewer than there should be: the range may be too narrow here.",
-    "trust untried": "There is not enough history to try the procedure on this series. The range is borrowed from the "
+    "trust untried": "There is not enough history to try the procedure on this series. The range is borrowed "
+        "from the "
                      "portfolio; treat it with care.",
     "trust too few": "Only {n} forecasts could be tried, too few to draw.",
     "changed title": "What changed", "changed sub": "From last round’s figures to these",
@@ -148,7 +151,8 @@ _SECTIONS = {
     "last untold": "Nothing was said of {when} before it closed.",
     "last count": "Of the last {n} {plural} {out} fell outside; about {expected} should.",
     "last count few": "Of the last {n} {plural} {out} fell outside; on average fewer than one should.",
-    "last lean none": "Misses fall on both sides: {above} {plural} came in above what would have been said and {below} below.",
+    "last lean none": "Misses fall on both sides: {above} {plural} came in above what would have been said and "
+        "{below} below.",
     "last lean above": "{above} of {n} {plural} came in above what would have been said: the forecast may lean low.",
     "last lean below": "{below} of {n} {plural} came in below what would have been said: the forecast may lean high.",
     "people title": "Adjustments", "people sub": "What people changed, and why",
@@ -159,14 +163,17 @@ _SECTIONS = {
     "findings none": "Nothing was found in the data of this series, and nothing was repaired.",
     "findings say": "{what} found in the data.",
     "findings was": "was", "findings were": "were",
-    "findings repaired|1": "One value was repaired for fitting; the raw value is kept and is what forecasts are measured against.",
-    "findings repaired|n": "{words} values were repaired for fitting; the raw values are kept and are what forecasts are "
+    "findings repaired|1": "One value was repaired for fitting; the raw value is kept and is what forecasts are "
+        "measured against.",
+    "findings repaired|n": "{words} values were repaired for fitting; the raw values are kept and are what "
+        "forecasts are "
                            "measured against.",
     "findings unrepaired": "Nothing was repaired.",
     "findings queries": "A query needs a person: please say whether the value is right.",
     "pattern title": "Pattern and method", "pattern sub": "What the history holds, and how the forecast uses it",
     "pattern unknown": "The pattern cannot be told yet.",
-    "strength strong": "Strong", "strength some": "Moderate", "strength weak": "Weak", "strength unknown": "Cannot tell",
+    "strength strong": "Strong", "strength some": "Moderate", "strength weak": "Weak",
+    "strength unknown": "Cannot tell",
     "strength of": "({value} of 1)",
     "method lead": "The method in plain words.",
     "method blend": "The figures shown are a blend of {count} methods.",
@@ -177,31 +184,37 @@ _SECTIONS = {
     "made title": "How it was made", "made sub": "So that it can be made again",
     "words title": "Words and cautions", "words sub": "",
     "why not title": "Why there is no forecast", "why not sub": "And what would change that",
-    "why not say": "{name} is not forecast in this round: {reason}.",
-    "why not next": "Its actuals so far are below. It will be forecast when the reason no longer holds.",
+    "why not say": "{reason}. It will be forecast when this no longer holds; its actuals so far are below.",
 }
 
 _GLOSSARY = {
-    "word forecast": "Forecast", "means forecast": "The most likely number: as likely to be too high as too low. It is the "
+    "word forecast": "Forecast", "means forecast": "The most likely number: as likely to be too high as too "
+        "low. It is the "
                      "baseline with the adjustments added.",
-    "word range": "Range", "means range": "Where the figure should fall. Values outside the {range} are expected now and "
+    "word range": "Range", "means range": "Where the figure should fall. Values outside the {range} are "
+        "expected now and "
                   "then ({outside}); they are not errors.",
     "word baseline": "Baseline, adjustment, adjusted",
     "means baseline": "The statistical forecast; a dated, signed and reasoned change to it; the sum of both.",
-    "word round": "Round", "means round": "One run of the forecast cycle, named by its last closed {noun}. It is drafted, "
+    "word round": "Round", "means round": "One run of the forecast cycle, named by its last closed {noun}. It "
+        "is drafted, "
                   "issued, and then agreed; an agreed round never changes.",
     "word miss": "Typical miss", "means miss": "The average size of the miss, whichever side it fell on.",
-    "word finding": "Finding, repair", "means finding": "A fault is certainly wrong, a query needs a person. A repair is the "
+    "word finding": "Finding, repair", "means finding": "A fault is certainly wrong, a query needs a person. A "
+        "repair is the "
                     "value used for fitting instead; the raw value is kept and shown.",
-    "word tried": "Would have said", "means tried": "The whole procedure lived through again from past {plural}, each time with "
+    "word tried": "Would have said", "means tried": "The whole procedure lived through again from past "
+        "{plural}, each time with "
                   "only what was known then.",
     "word blend": "Blend", "means blend": "A weighted combination of several methods.",
     "cautions": "Cautions",
-    "caution 1": "Forecasts mislead: they carry the past forward and do not know what nobody has told them, such as price "
+    "caution 1": "Forecasts mislead: they carry the past forward and do not know what nobody has told them, "
+        "such as price "
                  "changes, lost customers, closures or weather. Local rules and qualified judgement come first.",
     "caution 2": "The range is about the total of the {noun}. It does not say how single days will vary.",
     "caution 3": "Ranges do not add. For several {plural} or series, use the totals given.",
-    "caution 4": "The range says how far such forecasts have missed, in this portfolio and its past. It promises nothing about "
+    "caution 4": "The range says how far such forecasts have missed, in this portfolio and its past. It "
+        "promises nothing about "
                  "an unusual future.",
 }
 
@@ -209,7 +222,8 @@ _METHODS = {
     "method naive": "Last value (naive)", "method seasonal_naive": "Same season last year (seasonal naive)",
     "method mean": "Mean of all periods", "method moving_average": "Moving average",
     "method drift": "Last value with drift", "method ses": "Simple exponential smoothing",
-    "method differenced_ses": "Smoothed changes", "method seasonally_differenced_ses": "Smoothed changes on last year",
+    "method differenced_ses": "Smoothed changes", "method seasonally_differenced_ses": "Smoothed changes on "
+        "last year",
     "method holt": "Holt’s linear trend", "method damped_holt": "Damped trend",
     "method holt_winters_additive": "Holt-Winters, additive season",
     "method damped_holt_winters_additive": "Damped Holt-Winters, additive season",

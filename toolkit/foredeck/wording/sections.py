@@ -25,7 +25,8 @@ def outlook_words(facts: SeriesFacts, adjusted: pd.DataFrame, actuals: pd.DataFr
         return say("outlook one", noun=noun, when=long_name(first["period"], frequency),
                    value=write(first["adjusted"]), unit=unit)
     if facts.seasonal and len(rows) >= frequency.season_length / 2:
-        top, bottom = rows.loc[rows["adjusted"].idxmax()], rows.loc[rows["adjusted"].idxmin()]
+        said = rows["adjusted"].to_numpy()
+        top, bottom = rows.iloc[int(said.argmax())], rows.iloc[int(said.argmin())]
         text = say("outlook peak", noun=noun, high=long_name(top["period"], frequency), unit=unit,
                    top=write(top["adjusted"]), low=long_name(bottom["period"], frequency),
                    bottom=write(bottom["adjusted"]))
@@ -122,7 +123,7 @@ def changed_words(facts: SeriesFacts, changes: pd.DataFrame) -> str:
     if write.nice(first["adjustment"]) != 0:
         added = write.nice(first["adjustment"])
         parts.append(say("why split", baseline=write.signed(first["change"] - added), adjustment=write.signed(added)))
-    most = changes.loc[changes["change"].abs().idxmax()]
+    most = changes.iloc[int(changes["change"].abs().to_numpy().argmax())]
     if most["period"] != first["period"]:
         parts.append(say("changed most", when=long_name(most["period"], facts.frequency),
                          size=write.signed(most["change"])))
