@@ -89,6 +89,6 @@ def print_queries(repeats: int) -> None:
 
 
 if __name__ == "__main__":
-    asked = int(sys.argv[1]) if len(sys.argv) > 1 else 500
-    print_strengths(2 * asked)
+    asked = int(sys.argv[1]) if len(sys.argv) > 1 else 600
+    print_strengths(1000)
     print_queries(asked)
