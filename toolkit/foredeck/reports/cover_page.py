@@ -31,7 +31,7 @@ from foredeck.reports.cover_pictures import pictures
 from foredeck.reports.cover_record import cautions, made_facts, state_notes, state_words
 from foredeck.reports.cover_texts import one_or_many, say
 from foredeck.reports.cover_totals import totals_table, windows_table
-from foredeck.reports.cover_words import answers, change_text, headline, moves, turned_out_sentences
+from foredeck.reports.cover_words import answers, change_text, headline, moves, recorded, turned_out_sentences
 from foredeck.reports.fragments import Head, Section, paragraph
 from foredeck.reports.fragments import say as opening
 from foredeck.reports.series_head import answers_html
@@ -171,7 +171,7 @@ class Cover:
         for row in shown.to_dict("records"):
             figures = facts.figures(row["series"])
             rows.append({"series": self._link(row["series"]),
-                         "actual": Cell(plain(row["actual"], figures.decimals)),
+                         "actual": Cell(recorded(row["actual"], figures)),
                          "said": Cell(figures.text(row["said"])),
                          "range": Cell(figures.span(row["lower"], row["upper"])),
                          "miss": Cell(change_text(row["actual"], row["said"], figures)),

@@ -12,7 +12,7 @@ from foredeck.periods import Frequency
 from foredeck.reports.cover_cells import DrawnCell, as_is, frame_of, marked, name_css, shown_name
 from foredeck.reports.cover_facts import CoverFacts, Total
 from foredeck.reports.cover_texts import one_or_many, say
-from foredeck.reports.cover_words import share_text
+from foredeck.reports.cover_words import recorded, share_text
 from foredeck.reports.fragments import paragraph
 from foredeck.tables.html import Cell, Column, table
 from foredeck.wording.catalogue import upper_first
@@ -95,15 +95,10 @@ def _cells(facts: CoverFacts, total: Total, reach: float) -> dict[str, Any]:
     head = Cell(shown_name(total.member), css=name_css(total.member))
     if total.scope == "all":
         head = Cell(say("totals all", count=plain(len(facts.next))), narrow=say("totals all short"))
-    return {"head": head, "past": Cell(_recorded(total.last_year, total.figures), mark=star),
+    return {"head": head, "past": Cell(recorded(total.last_year, total.figures), mark=star),
             "previous": Cell(write(total.previous)), "forecast": Cell(write(ahead.value)),
             "range": Cell(total.figures.span(ahead.lower, ahead.upper)),
             "against": Cell(share_text(total.against), mark=star), "bar": DrawnCell("", drawing=bar)}
-
-
-def _recorded(value: float, figures: Rounding) -> str:
-    """A figure of the past: whole where it is, else with the decimals of the forecast beside it."""
-    return plain(value, 0 if value.is_integer() else figures.decimals)
 
 
 def _columns(facts: CoverFacts, names: list[str], edge: str) -> list[Column]:
@@ -147,8 +142,8 @@ def _window(facts: CoverFacts, row: dict[Any, Any]) -> dict[str, Any]:
     year, first, last = row["window"] == "year", str(row["first"]), str(row["last"])
     name = Cell(window_name(first, last, facts.frequency, year=year),
                 narrow=say("window year to" if year else "window to", last=short_name(last, facts.frequency)))
-    return {"window": name, "past": Cell(_recorded(past, figures)),
-            "sofar": Cell(_recorded(so_far, figures) if so_far else "–"),
+    return {"window": name, "past": Cell(recorded(past, figures)),
+            "sofar": Cell(recorded(so_far, figures) if so_far else "–"),
             "forecast": Cell(figures.text(value)), "range": Cell(figures.span(lower, upper)),
             "against": Cell(share_text(against))}
 

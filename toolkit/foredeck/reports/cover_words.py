@@ -21,6 +21,11 @@ def change_text(now: float, before: float, figures: Rounding) -> str:
     return signed(figures.nice(now) - figures.nice(before), figures.decimals)
 
 
+def recorded(value: float, figures: Rounding) -> str:
+    """A figure of the past: whole where it is, else with the decimals of the forecast beside it."""
+    return plain(value, 0 if value.is_integer() else figures.decimals)
+
+
 def share_text(value: float) -> str:
     """A signed share of last year: "+2%", "−7%", "0%"; "–" where it is not known."""
     return f"{signed(100 * value)}%" if math.isfinite(value) else "–"
@@ -92,7 +97,7 @@ def _how_many(facts: CoverFacts) -> Answer:
     past = long_name(facts.last_year_period, facts.frequency)
     last_year = say("how many no year", past=past)
     if math.isfinite(total.last_year):
-        told = {"past": upper_first(past), "value": plain(total.last_year)}
+        told = {"past": upper_first(past), "value": recorded(total.last_year, total.figures)}
         last_year = one_or_many("how many like", total.without, **told) if total.without else say(
             "how many year", **told)
     return Answer(
@@ -189,7 +194,7 @@ def _how_turned_out(facts: CoverFacts) -> Answer:
         figures = facts.overall.figures
         share = share_text(actual / expected - 1 if expected > 0 else math.nan)
         text = say("turned all" if came.by_round else "turned all would", share=share,
-                   actual=plain(actual, figures.decimals), said=figures.text(expected))
+                   actual=recorded(actual, figures), said=figures.text(expected))
     return Answer(say("turned out", when=when), say("turned big", inside=plain(came.inside), n=plain(n)),
                   say("turned small"), lead, text)
 
