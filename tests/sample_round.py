@@ -9,6 +9,8 @@ and their internal order (ranges nested, totals of the right size).
 from __future__ import annotations
 
 import json
+from dataclasses import replace
+from functools import cache
 from typing import Any
 
 import numpy as np
@@ -55,6 +57,13 @@ def sample_view(previous: bool = True, *, frequency: str = "monthly", horizon: i
     adjusted : bool
         False: nobody changed anything.
     """
+    kept = _view(previous, frequency, horizon, scale, adjusted)
+    before = kept.previous and replace(kept.previous, adjusted=kept.previous.adjusted.copy())
+    return replace(kept, tables={name: table.copy() for name, table in kept.tables.items()}, previous=before)
+
+
+@cache
+def _view(previous: bool, frequency: str, horizon: int, scale: float, adjusted: bool) -> RoundView:
     made = _Round(frequency, horizon, scale, adjusted)
     tables = made.tables()
     before = Previous(made.names(made.closing - 1, 1)[0], made.previous()) if previous else None

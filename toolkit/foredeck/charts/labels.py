@@ -30,7 +30,8 @@ LABELS: dict[str, str] = {
     "season rest": "Blocks: the year ahead as forecast. Circles: earlier years. Line: the latest year.",
     "season rest past": "Circles: earlier years. Line: the latest year.",
     "season alt": "Season: highest in {top} at {top_value} of 100, lowest in {low} at {low_value}.",
-    "season used": "as forecast", "season back": "{count} earlier", "season earlier": "earlier years", "season latest": "latest year",
+    "season used": "as forecast", "season back": "{count} earlier",
+    "season earlier": "earlier years", "season latest": "latest year",
     "season average": "average {noun}",
     "weight lead": "How much each past {noun} counts", "weight rest": "in the level of “{method}”, out of 100; "
         "newest at the right.",

@@ -61,7 +61,8 @@ def small_picture_of(name: str, actuals: pd.DataFrame, adjusted: pd.DataFrame, *
     values = [*known["used"], *coming["adjusted"], *coming[f"upper_{outer}"], *coming[f"lower_{outer}"], 0.0]
     finite = [v for v in values if math.isfinite(v)]
     low, high = min(finite), max(finite)
-    step, reach = (width - 8) / (past + ahead), float(high - low) or 1.0
+    step = (width - 8) / (past + ahead)
+    reach: float = (high - low) or 1.0
 
     def x(at: float) -> float:
         return 4 + (at + past - 0.5) * step

@@ -11,7 +11,7 @@ from foredeck.charts.labels import MONTHS
 from foredeck.periods import Frequency, parse_period, period_name, season_position
 
 _STEPS = {
-    Frequency.YEARLY: (1, 2, 5, 10, 20, 50), Frequency.QUARTERLY: (1, 2, 4, 8, 20, 40),
+    Frequency.YEARLY: (1, 2, 5, 10, 20, 50, 100), Frequency.QUARTERLY: (1, 2, 4, 8, 20, 40, 80),
     Frequency.MONTHLY: (1, 3, 6, 12, 24, 60, 120), Frequency.WEEKLY: (1, 2, 4, 13, 26, 52, 104, 260, 520),
 }
 _PIXELS = {Frequency.YEARLY: 44, Frequency.QUARTERLY: 36, Frequency.MONTHLY: 40, Frequency.WEEKLY: 42}

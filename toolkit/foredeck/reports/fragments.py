@@ -32,14 +32,19 @@ def paragraph(text: str, css: str = "", lead: str = "") -> str:
     return f"<p{form}>{f'<b>{escape(lead)}</b> ' if lead else ''}{escape(text)}</p>"
 
 
-def _show(html: str, plain: str, facts: dict[str, Any]) -> None:
-    _publish({"text/html": html, "text/plain": plain}, facts)
+Output = tuple[dict[str, Any], dict[str, Any]]
+"""What a notebook keeps of one display: its data by mime type, and its metadata."""
 
 
-def _publish(bundle: dict[str, Any], facts: dict[str, Any]) -> None:
+def _output(html: str, plain: str, facts: dict[str, Any]) -> Output:
+    return {"text/html": html, "text/plain": plain}, {KEY: facts}
+
+
+def _display(outputs: Sequence[Output]) -> None:
     from IPython.display import display
 
-    display(bundle, raw=True, metadata={KEY: facts})  # type: ignore[no-untyped-call]
+    for data, metadata in outputs:
+        display(data, raw=True, metadata=metadata)  # type: ignore[no-untyped-call]
 
 
 @dataclass(frozen=True)
@@ -59,15 +64,21 @@ class Section:
     sub: str
     parts: Sequence[Part]
 
-    def _ipython_display_(self) -> None:
-        _show(f"<h2>{escape(self.title)}</h2>{paragraph(self.sub)}", self.title,
-              {"kind": "section", "id": self.id, "title": self.title, "sub": self.sub})
+    def outputs(self) -> list[Output]:
+        """Return what a notebook shows of the section: its heading, then part by part."""
+        made = [_output(f"<h2>{escape(self.title)}</h2>{paragraph(self.sub)}", self.title,
+                        {"kind": "section", "id": self.id, "title": self.title, "sub": self.sub})]
         for part in self.parts:
             if isinstance(part, Figure):
-                bundle, _ = part._repr_mimebundle_()
-                _publish(bundle, {"kind": "chart", "id": part.id})
+                data, _ = part._repr_mimebundle_()
+                made.append((data, {KEY: {"kind": "chart", "id": part.id}}))
             elif part:
-                _show(part.html() if isinstance(part, Picture) else part, self.title, {"kind": "part"})
+                html = part.html() if isinstance(part, Picture) else part
+                made.append(_output(html, self.title, {"kind": "part"}))
+        return made
+
+    def _ipython_display_(self) -> None:
+        _display(self.outputs())
 
 
 @dataclass(frozen=True)
@@ -108,5 +119,9 @@ class Head:
         return {"kind": "head", "title": self.title, "kick": list(self.kick), "running": list(self.running),
                 "link": list(self.link) if self.link else None, "language": self.language}
 
+    def outputs(self) -> list[Output]:
+        """Return what a notebook shows of the head."""
+        return [_output(self.html(), self.heading, self.facts())]
+
     def _ipython_display_(self) -> None:
-        _show(self.html(), self.heading, self.facts())
+        _display(self.outputs())
