@@ -8,11 +8,11 @@ from dataclasses import replace
 import numpy as np
 import pandas as pd
 import pytest
-from sample_round import HOSTILE, INTERMITTENT, NAMES, NEWCOMER, NOT_FORECAST, SEASONAL, TREND, sample_study
 
 import foredeck.charts
 from foredeck.charts.figure import PLOTLY
 from foredeck.charts.weight_chart import leading_constant, weights_of
+from sample_round import HOSTILE, INTERMITTENT, NAMES, NEWCOMER, NOT_FORECAST, SEASONAL, TREND, sample_study
 
 CHARTS = ("outlook", "trust", "last_time", "season", "weights", "members")
 OPTIONS = ({}, {"frequency": "quarterly", "horizon": 4}, {"frequency": "weekly", "horizon": 13},

@@ -6,11 +6,11 @@ import re
 from xml.etree import ElementTree
 
 import pytest
-from sample_round import HOSTILE, INTERMITTENT, NAMES, NOT_FORECAST, SEASONAL, sample_study
 
 import foredeck.charts
 from foredeck.charts.pictures import small_picture, totals_bar
 from foredeck.charts.strip_picture import strip, strip_of
+from sample_round import HOSTILE, INTERMITTENT, NAMES, NOT_FORECAST, SEASONAL, sample_study
 
 NAN = float("nan")
 

@@ -9,13 +9,13 @@ import sys
 import nbformat
 import pytest
 from nbformat.v4 import new_code_cell, new_markdown_cell, new_notebook, new_output
-from sample_round import HOSTILE, NAMES, SEASONAL, sample_study
 
 from foredeck.assets import template_folder
 from foredeck.charts.figure import PLOTLY
 from foredeck.errors import ReportError
 from foredeck.reports import series_page as page
 from foredeck.reports.export import export_html, put_plotly_beside
+from sample_round import HOSTILE, NAMES, SEASONAL, sample_study
 
 CHARTS = ["outlook-data", "trust-data", "last-time-data", "season-data", "members-data", "weights-data"]
 

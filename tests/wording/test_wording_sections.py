@@ -6,7 +6,6 @@ from dataclasses import replace
 
 import pandas as pd
 import pytest
-from sample_round import INTERMITTENT, NEWCOMER, SEASONAL, TREND, sample_study
 
 from foredeck.wording import english
 from foredeck.wording.catalogue import say
@@ -23,6 +22,7 @@ from foredeck.wording.sections import (
     strength_words,
     trust_words,
 )
+from sample_round import INTERMITTENT, NEWCOMER, SEASONAL, TREND, sample_study
 
 NO_MISSES = pd.DataFrame({"lead": [], "n": [], "miss": [], "benchmark": []})
 
@@ -137,7 +137,8 @@ def test_findings_are_counted_by_kind_and_repairs_apart():
 def test_what_changed_without_a_round_before_and_without_an_overlap():
     none = pd.DataFrame({c: [] for c in ("period", "before", "now", "change", "adjustment")})
     assert changed_words(facts_of(sample_study(SEASONAL, previous=False)), none).startswith("This is the first round")
-    assert changed_words(facts_of(sample_study(SEASONAL)), none) == "Round 2026-09 said nothing about the months shown here."
+    assert changed_words(facts_of(sample_study(SEASONAL)), none) == (
+        "Round 2026-09 said nothing about the months shown here.")
 
 
 def test_strengths_have_words_with_the_published_limit_for_a_strong_season():
