@@ -63,7 +63,8 @@ def main() -> None:
     asked = parser.parse_args()
     data = pd.read_parquet(asked.path)
     data = data[data["freq"] == asked.freq].sort_values(["series", "t"])
-    parts = {name: (g.loc[g["part"] == "train", "value"].to_numpy(float), g.loc[g["part"] == "test", "value"].to_numpy(float))
+    parts = {name: (g.loc[g["part"] == "train", "value"].to_numpy(float),
+                    g.loc[g["part"] == "test", "value"].to_numpy(float))
              for name, g in data.groupby("series")}
     drawn = np.random.default_rng(asked.seed).permutation(sorted(parts))[: asked.series]
     options = ForecastOptions(horizon=HORIZONS[asked.freq], levels=LEVELS, style=asked.style)

@@ -82,14 +82,15 @@ def test_in_a_first_round_the_range_is_the_one_the_backtest_would_have_given():
     assert row["reasons"] == "October came to 20, below the range that would have been given (42 to 142)."
 
 
-def test_open_queries_of_the_last_three_periods_are_listed_and_faults_and_older_ones_are_not():
+def test_faults_and_open_queries_of_the_last_three_periods_are_listed_and_older_ones_are_not():
     tables = _quiet()
     tables["findings"] = pd.DataFrame(
         [("north/pots", "2026-10", "outlier", "query"), ("north/pots", "2026-08", "outlier", "query"),
-         ("north/seeds", "2026-10", "gap", "fault"), ("river/pots", "2026-07", "outlier", "query")],
+         ("north/pots", "2026-09", "gap", "fault"), ("river/pots", "2026-07", "outlier", "query")],
         columns=["series", "period", "code", "kind"])
     row = _only(watch_list(tables))
-    assert (row["series"], row["reasons"]) == ("north/pots", "An outlier is queried in August and October.")
+    assert (row["series"], row["reasons"]) == (
+        "north/pots", "An outlier is queried in August and October. September has no value.")
     assert row["ask"] == "Was it a single order, or will it come again?"
 
 
@@ -98,8 +99,10 @@ def test_open_queries_of_the_last_three_periods_are_listed_and_faults_and_older_
     ("change_of_unit", "A change of unit is queried in October.", "Was it entered in another unit?"),
     ("zero_run", "A run of zeros is queried in October.", "Was nothing asked for, or nothing there to give?"),
     ("repeated_constant", "A repeated constant is queried in October.", "Was it counted, or copied?"),
-    ("new_code", "A finding (new_code) is queried in October.", "Is the value right?")])
-def test_each_query_has_its_words_and_its_question(code, text, ask):
+    ("incomplete_last_period", "October looks incomplete.", "Is it booked in full?"),
+    ("stale", "No value has come from October on.", "Is the series late, or has it ended?"),
+    ("new_code", "A finding (new_code) is noted in October.", "Is the value right?")])
+def test_each_finding_has_its_words_and_its_question(code, text, ask):
     tables = _quiet()
     tables["findings"] = pd.DataFrame({"series": ["north/pots"], "period": ["2026-10"], "code": [code],
                                        "kind": ["query"]})

@@ -2,7 +2,7 @@
 
 The rules are simple ones. A series is listed when at least one of them speaks:
 
-    an open query in one of the last three periods
+    a fault or an open query in one of the last three periods
     the last actual outside the range that was (or would have been) given
     the next period's figure moved outside the inner range of the round before
     "same as last year" has missed by less, one period ahead, in the procedure backtest
@@ -33,12 +33,18 @@ MATERIALLY = 1.05
 FEWEST_CELLS = 6
 """Forecasts that a comparison with the benchmark rests on at least."""
 
-_QUERIES: Mapping[str, tuple[str, str]] = {
-    "outlier": ("an outlier", "Was it a single order, or will it come again?"),
-    "level_shift": ("a level shift", "Has something changed for good?"),
-    "change_of_unit": ("a change of unit", "Was it entered in another unit?"),
-    "zero_run": ("a run of zeros", "Was nothing asked for, or nothing there to give?"),
-    "repeated_constant": ("a repeated constant", "Was it counted, or copied?"),
+_FINDINGS: Mapping[str, tuple[str, str]] = {
+    "incomplete_last_period": ("{when} looks incomplete", "Is it booked in full?"),
+    "stale": ("no value has come from {when} on", "Is the series late, or has it ended?"),
+    "gap": ("{when} has no value", "Was nothing sold, or nothing reported?"),
+    "impossible_sign": ("{when} is below zero", "Is it a return or a credit?"),
+    "not_a_number": ("{when} is not a number", "What was the value?"),
+    "duplicate": ("{when} was given twice", "Which of the values is right?"),
+    "outlier": ("an outlier is queried in {when}", "Was it a single order, or will it come again?"),
+    "level_shift": ("a level shift is queried in {when}", "Has something changed for good?"),
+    "change_of_unit": ("a change of unit is queried in {when}", "Was it entered in another unit?"),
+    "zero_run": ("a run of zeros is queried in {when}", "Was nothing asked for, or nothing there to give?"),
+    "repeated_constant": ("a repeated constant is queried in {when}", "Was it counted, or copied?"),
 }
 
 
@@ -71,7 +77,7 @@ def watch_list(tables: Mapping[str, pd.DataFrame], previous: pd.DataFrame | None
     following = str(forecasts["period"].min())
     closing = shifted(following, -1)
     levels = sorted(int(str(name)[6:]) for name in forecasts.columns if str(name).startswith("lower_"))
-    reasons = [*_outside(tables, previous, closing, levels[-1]), *_queries(tables["findings"], closing),
+    reasons = [*_outside(tables, previous, closing, levels[-1]), *_open_findings(tables["findings"], closing),
                *_moved(tables["adjusted"], previous, following, levels[0]),
                *_benchmark_better(tables["reliability"]), *_beyond_range(tables, levels[-1])]
     told: dict[str, list[_Reason]] = {}
@@ -96,13 +102,13 @@ def _outside(tables: Mapping[str, pd.DataFrame], previous: pd.DataFrame | None, 
                       else "A single large order, or a lasting change?")
 
 
-def _queries(findings: pd.DataFrame, closing: str) -> Iterator[_Reason]:
+def _open_findings(findings: pd.DataFrame, closing: str) -> Iterator[_Reason]:
     recent = [shifted(closing, -back) for back in (2, 1, 0)]
-    kept = findings[(findings["kind"] == "query") & findings["period"].isin(recent)]
+    kept = findings[findings["period"].isin(recent)]
     for (name, code), group in kept.groupby(["series", "code"], sort=False):
-        what, ask = _QUERIES.get(str(code), (f"a finding ({code})", "Is the value right?"))
+        what, ask = _FINDINGS.get(str(code), (f"a finding ({code}) is noted in {{when}}", "Is the value right?"))
         when = listed([period_words(period) for period in sorted(set(group["period"]))])
-        yield _Reason(str(name), sentence(f"{what} is queried in {when}."), ask)
+        yield _Reason(str(name), sentence(what.format(when=when) + "."), ask)
 
 
 def _moved(adjusted: pd.DataFrame, previous: pd.DataFrame | None, following: str,
