@@ -114,6 +114,11 @@ def test_the_cautions_put_local_rules_and_judgement_first():
     assert "Local rules and qualified judgement come first." in sections(sample_study(TREND))["words"]
 
 
+def test_the_season_is_drawn_only_where_there_is_more_than_noise():
+    assert 'data-chart="season-data"' in sections(sample_study(SEASONAL))["pattern"]
+    assert 'data-chart="season-data"' not in sections(sample_study(TREND))["pattern"]  # strength 0.08
+
+
 def test_an_intermittent_series_is_told_by_how_often_there_is_demand():
     assert "One month in 4.0 has any." in sections(sample_study(INTERMITTENT))["pattern"]
 

@@ -27,7 +27,10 @@ def test_the_headline_says_how_many_and_what_moved_it():
 
 
 def test_the_headline_of_a_first_round_compares_with_the_year_before():
-    assert headline(given(previous=False)) == "Expect about 990 cases in November, about 90 more than a year before."
+    assert headline(given(previous=False)) == (
+        "Expect about 990 cases in November, about 90 more than a year before: an adjustment of +40 is included.")
+    assert headline(given(previous=False, adjusted=False)) == (
+        "Expect about 950 cases in November, about 50 more than a year before.")
 
 
 def test_the_headline_of_a_newcomer_claims_no_comparison_it_does_not_have():
@@ -108,6 +111,10 @@ def test_trust_counts_hits_against_the_expected_and_names_the_benchmark():
 def test_a_forecast_that_does_much_worse_than_the_benchmark_is_told_as_such():
     words = told(given(INTERMITTENT))["Can I trust it?"]
     assert "Typical miss 2.8 cases, against 0.7 for “same as last year”." in words
+
+
+def test_a_series_without_a_year_before_is_not_compared_with_last_year():
+    assert "smaller than “same as the last value”." in told(given(NEWCOMER))["Can I trust it?"]
 
 
 def test_a_history_too_short_to_try_says_so():

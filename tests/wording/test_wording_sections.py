@@ -48,6 +48,15 @@ def test_a_rising_outlook_is_told_from_its_first_to_its_last_period():
     rising = study.adjusted.assign(adjusted=[600.0, 640.0, 700.0])
     assert outlook_words(facts_of(study), rising, study.actuals) == (
         "Expect a rise, from about 600 cases in November 2026 to about 700 in January 2027.")
+    falling = study.adjusted.assign(adjusted=[700.0, 640.0, 600.0])
+    assert outlook_words(facts_of(study), falling, study.actuals).startswith("Expect a fall, from about 700 cases")
+
+
+def test_a_course_that_hardly_moves_within_its_range_is_told_as_level():
+    study = sample_study(TREND, horizon=3)  # nine in ten 559 to 651
+    hardly = study.adjusted.assign(adjusted=[600.0, 612.0, 603.0])
+    assert outlook_words(facts_of(study), hardly, study.actuals) == (
+        "Expect about 605 cases a month all the way to January 2027.")
 
 
 def test_the_landing_adds_actuals_and_forecast_and_is_silent_without_a_year():

@@ -41,7 +41,7 @@ LABELS: dict[str, str] = {
     "members rest": "Diamonds: the forecast. Circles: each of its {n} methods.", "each method": "each method",
     "members from": " The scale does not begin at zero: read the distances.",
     "members alt": "Forecasts of {n} methods beside their blend; in {when} they lie between {low} and {high} {unit}.",
-    "same as yearly": "same as year before", "same as other": "same as last year",
+    "same as last": "same as last value", "same as yearly": "same as year before", "same as other": "same as last year",
     "level 50": "one in two", "level 80": "eight in ten", "level 90": "nine in ten", "level 95": "19 in 20",
     "level other": "{level} in 100",
     "short 50": "1 in 2", "short 80": "8 in 10", "short 90": "9 in 10", "short 95": "19 in 20",
@@ -75,6 +75,8 @@ def range_label(level: int) -> str:
     return level_label(level).replace(" ", "-")
 
 
-def benchmark_label(frequency: Frequency) -> str:
-    """Name the benchmark as readers know it."""
-    return label("same as yearly" if frequency is Frequency.YEARLY else "same as other")
+def benchmark_label(frequency: Frequency, year_before: bool = True) -> str:
+    """Name the benchmark as readers know it: the year before, or the last value where there is none."""
+    if frequency is Frequency.YEARLY:
+        return label("same as yearly")
+    return label("same as other" if year_before else "same as last")

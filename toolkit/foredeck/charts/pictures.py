@@ -60,15 +60,15 @@ def small_picture_of(name: str, actuals: pd.DataFrame, adjusted: pd.DataFrame, *
     coming = coming.assign(at=time.places(coming["period"]))
     values = [*known["used"], *coming["adjusted"], *coming[f"upper_{outer}"], *coming[f"lower_{outer}"], 0.0]
     finite = [v for v in values if math.isfinite(v)]
-    low, high = min(finite), max(finite)
+    low, high = float(min(finite)), float(max(finite))
     step = (width - 8) / (past + ahead)
-    reach: float = (high - low) or 1.0
+    reach = (high - low) or 1.0
 
     def x(at: float) -> float:
         return 4 + (at + past - 0.5) * step
 
     def y(value: float) -> float:
-        return height - 3 - (value - low) / reach * (height - 8)
+        return float(height - 3 - (value - low) / reach * (height - 8))
 
     parts = [f'<line x1="0" x2="{width}" y1="{y(0):.1f}" y2="{y(0):.1f}" stroke="{token("hair")}" {_STILL}/>']
     for row in coming.to_dict("records"):

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import sys
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
@@ -58,7 +59,8 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
         execute_notebook(
             str(notebook), str(partly), dict(parameters), kernel_name="python3", progress_bar=False, log_output=False,
             start_timeout=START_SECONDS, execution_timeout=cell_seconds, request_save_on_cell_execute=False,
-            autosave_cell_every=0, cwd=None if folder is None else str(folder))
+            autosave_cell_every=0, shutdown_kernel="immediate", config=_kernel_config(),
+            cwd=None if folder is None else str(folder))
     except PapermillExecutionError as error:
         raise _failed(notebook, f"cell {error.cell_index + 1} failed: {error.ename}: {error.evalue}",
                       "mend the cause and run the notebook again") from error
@@ -72,6 +74,21 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
         return out
     finally:
         partly.unlink(missing_ok=True)
+
+
+def _kernel_config() -> Any:
+    """Let kernels speak over sockets in the user's own folder, where the system has them.
+
+    Ports may be taken by another kernel between choosing and opening them, and are open to the machine's other
+    users. A socket's path has to fit into 107 bytes on Linux, of which the kernel's file name takes some 50.
+    """
+    from jupyter_core.paths import jupyter_runtime_dir
+    from traitlets.config import Config
+
+    config = Config()
+    if sys.platform != "win32" and len(jupyter_runtime_dir().encode()) < 55:
+        config.KernelManager.transport = "ipc"
+    return config
 
 
 def _failed(notebook: Path, what: str, do: str) -> ReportError:

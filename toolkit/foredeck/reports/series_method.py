@@ -8,7 +8,8 @@ import pandas as pd
 
 from foredeck.charts.members_chart import members as members_chart
 from foredeck.charts.season_chart import season as season_chart
-from foredeck.charts.trust_chart import LEAST, misses_by_lead, trust_figure
+from foredeck.charts.trust_chart import LEAST, misses_by_lead
+from foredeck.charts.trust_chart import trust as trust_chart
 from foredeck.charts.weight_chart import weights as weights_chart
 from foredeck.reports.fragments import Part, Section, paragraph, say
 from foredeck.reports.page_texts import text
@@ -20,6 +21,9 @@ from foredeck.wording.facts import SeriesFacts, facts_of
 from foredeck.wording.numbers import Rounding, percent, plain
 from foredeck.wording.sections import range_record_words, strength_words, trust_words
 
+WEAK = 0.3
+"""Season strength below which a picture of the season would be a picture of noise."""
+
 
 def trust(study: Study) -> Section | None:
     """Show how far forecasts of this series have missed; None where it is not forecast."""
@@ -29,7 +33,7 @@ def trust(study: Study) -> Section | None:
     misses = misses_by_lead(study.reliability)
     parts: list[Part] = [say(trust_words(facts, misses))]
     if len(misses):
-        parts.append(trust_figure(misses, frequency=study.frequency, unit=study.unit))
+        parts.append(trust_chart(study))
     elif facts.one_ahead.n:
         parts.append(paragraph(words("trust too few", n=facts.one_ahead.n), "note"))
     parts.append(paragraph(range_record_words(facts, study.reliability)))
@@ -42,7 +46,7 @@ def pattern(study: Study) -> Section:
     """Show what the history holds, and how the forecast uses it."""
     facts = facts_of(study)
     parts: list[Part] = [say(str(study.info.get("pattern_words") or words("pattern unknown"))),
-                         pairs(_strengths(study, facts)), season_chart(study) or ""]
+                         pairs(_strengths(study, facts)), _season(study)]
     if facts.forecast:
         parts.append(paragraph(str(study.info.get("method_words") or ""), lead=words("method lead")))
         names = {m: method_name(m) for m in study.members["method"].unique()}
@@ -50,6 +54,12 @@ def pattern(study: Study) -> Section:
     if len(study.eligibility):
         parts.append(_methods(study, facts))
     return Section("pattern", words("pattern title"), words("pattern sub"), parts)
+
+
+def _season(study: Study) -> Part:
+    """Draw the season where there is more of it than noise shows; nothing else."""
+    strength = study.info.get("season_strength")
+    return (season_chart(study) if strength is not None and float(strength) >= WEAK else None) or ""
 
 
 def _strengths(study: Study, facts: SeriesFacts) -> list[tuple[str, str]]:

@@ -59,12 +59,14 @@ def _moved(facts: SeriesFacts) -> str:
 
 
 def _against_year(facts: SeriesFacts) -> str:
-    if not is_known(facts.last_year):
-        return ""
-    size = facts.figures.nice(facts.shown - facts.last_year)
-    if size == 0:
-        return say("headline same year")
-    return say("headline more year" if size > 0 else "headline less year", size=facts.figures.text(abs(size)))
+    text = ""
+    if is_known(facts.last_year):
+        size = facts.figures.nice(facts.shown - facts.last_year)
+        side = "more" if size > 0 else "less" if size < 0 else "same"
+        text = say(f"headline {side} year", size=facts.figures.text(abs(size)))
+    if facts.figures.nice(facts.adjustment) == 0:
+        return text
+    return text + say("headline because", why=say("headline adjusted", size=signed(facts.adjustment, facts.decimals)))
 
 
 def answers(facts: SeriesFacts) -> list[Answer]:
@@ -120,7 +122,7 @@ def _last_year(facts: SeriesFacts) -> Answer:
 
 
 def _year_big(facts: SeriesFacts, size: float) -> str:
-    """A percentage where it says something: the base positive and the change below threefold."""
+    """Write a percentage where it says something: the base positive and the change below threefold."""
     if size == 0:
         return say("year same")
     base = facts.last_year
@@ -190,7 +192,7 @@ def typical_miss(facts: SeriesFacts) -> str:
     miss = facts.figures_of_misses.text(tried.miss)
     if not is_known(tried.benchmark_miss) or tried.benchmark_miss <= 0:
         return say("trust miss", miss=miss, unit=facts.unit)
-    share, benchmark = 1 - tried.miss / tried.benchmark_miss, benchmark_name(facts.frequency)
+    share, benchmark = 1 - tried.miss / tried.benchmark_miss, benchmark_name(facts.frequency, facts.year_before)
     if share < -1:
         return say("trust miss far", miss=miss, unit=facts.unit, benchmark=benchmark,
                    other=facts.figures_of_misses.text(tried.benchmark_miss))

@@ -23,6 +23,7 @@ _NAMES = {
     "hits 50": "half of {plural} like this", "hits 80": "eight {plural} in ten like this",
     "hits 90": "nine {plural} in ten like this", "hits 95": "19 {plural} in 20 like this",
     "hits other": "{level} {plural} in 100 like this",
+    "same as last": "same as the last value",
     "same as yearly": "same as the year before", "same as other": "same as last year",
     "fault|1": "one fault", "fault|n": "{words} faults", "query|1": "one query", "query|n": "{words} queries",
 }

@@ -146,6 +146,7 @@ class SeriesFacts:
     last_said: Said
     last_said_by_round: bool
     one_ahead: OneAhead
+    year_before: bool
 
     @property
     def forecast(self) -> bool:
@@ -250,7 +251,15 @@ def facts_of(study: StudyLike) -> SeriesFacts:
         adjustment=NAN if first is None else float(first["adjustment"]),
         last_actual=NAN if last is None else float(last["raw"]), last_said=last_said, last_said_by_round=by_round,
         one_ahead=one_ahead(study.reliability, outer),
+        year_before=_has_year_before(study.reliability, study.actuals, frequency),
     )
+
+
+def _has_year_before(reliability: pd.DataFrame, actuals: pd.DataFrame, frequency: Frequency) -> bool:
+    """Say whether each period that was tried has a period one season before it in the series."""
+    known = set(actuals["period"])
+    return all(period_name(parse_period(str(p), frequency) - frequency.season_length) in known
+               for p in reliability["period"].unique())
 
 
 def _last_said(study: StudyLike, outer: int, inner: int | None) -> tuple[Said, bool]:

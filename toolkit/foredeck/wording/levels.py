@@ -28,6 +28,15 @@ def outside_words(level: int, frequency: Frequency) -> tuple[str, bool]:
     return text, _key(level) == "other"
 
 
-def benchmark_name(frequency: Frequency) -> str:
-    """Name the seasonal naive benchmark as readers know it."""
-    return say("same as yearly" if frequency is Frequency.YEARLY else "same as other")
+def benchmark_name(frequency: Frequency, year_before: bool = True) -> str:
+    """Name the benchmark as readers know it.
+
+    Parameters
+    ----------
+    year_before : bool
+        False where some of its figures could not be those of a year before, because the series
+        is too young: they are then the last value known.
+    """
+    if frequency is Frequency.YEARLY:
+        return say("same as yearly")
+    return say("same as other" if year_before else "same as last")

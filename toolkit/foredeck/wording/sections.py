@@ -24,8 +24,12 @@ def outlook_words(facts: SeriesFacts, adjusted: pd.DataFrame, actuals: pd.DataFr
     if len(rows) == 1:
         return say("outlook one", noun=noun, when=long_name(first["period"], frequency),
                    value=write(first["adjusted"]), unit=unit)
-    if facts.seasonal and len(rows) >= frequency.season_length / 2:
-        said = rows["adjusted"].to_numpy()
+    said = rows["adjusted"].to_numpy()
+    # What moves by less than a seventh of the range's width is level to a reader.
+    if said.max() - said.min() <= max(facts.figures.step, (facts.ahead.upper - facts.ahead.lower) / 7):
+        return say("outlook level", value=write(float(said.mean())), unit=unit, noun=noun,
+                   end=long_name(last["period"], frequency))
+    if {int(said.argmax()), int(said.argmin())} != {0, len(rows) - 1}:
         top, bottom = rows.iloc[int(said.argmax())], rows.iloc[int(said.argmin())]
         text = say("outlook peak", noun=noun, high=long_name(top["period"], frequency), unit=unit,
                    top=write(top["adjusted"]), low=long_name(bottom["period"], frequency),
@@ -36,11 +40,9 @@ def outlook_words(facts: SeriesFacts, adjusted: pd.DataFrame, actuals: pd.DataFr
             text += say("outlook peak year", high=near_name(top["period"], frequency),
                         value=plain(before["raw"].iloc[0], facts.decimals))
         return text
-    drift, end = facts.figures.nice(last["adjusted"] - first["adjusted"]), long_name(last["period"], frequency)
-    if abs(drift) <= facts.figures.step:
-        return say("outlook level", value=write(rows["adjusted"].mean()), unit=unit, noun=noun, end=end)
-    return say("outlook rises" if drift > 0 else "outlook falls", first=write(first["adjusted"]), unit=unit,
-               start=long_name(first["period"], frequency), last=write(last["adjusted"]), end=end)
+    return say("outlook rises" if said[-1] > said[0] else "outlook falls", first=write(first["adjusted"]), unit=unit,
+               start=long_name(first["period"], frequency), last=write(last["adjusted"]),
+               end=long_name(last["period"], frequency))
 
 
 def landing_words(facts: SeriesFacts, totals: pd.DataFrame) -> str:
@@ -69,7 +71,7 @@ def trust_words(facts: SeriesFacts, misses: pd.DataFrame) -> str:
     rows = misses[misses["benchmark"].notna()]
     if rows.empty or not is_known(facts.one_ahead.benchmark_miss):
         return typical_miss(facts)
-    benchmark = benchmark_name(facts.frequency)
+    benchmark = benchmark_name(facts.frequency, facts.year_before)
     write = facts.figures_of_misses.text
     text = say("trust say against", noun=facts.frequency.noun, miss=write(facts.one_ahead.miss), unit=facts.unit,
                other=write(facts.one_ahead.benchmark_miss), benchmark=benchmark)
