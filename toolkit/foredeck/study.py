@@ -178,7 +178,7 @@ def study(series: SeriesHistory | pd.Series[Any], horizon: int | None = None, *,
     from foredeck.periods import FinancialYear, period_name
     from foredeck.portfolio.alone import ForecastOptions, examine
     from foredeck.portfolio.applied import apply_fit
-    from foredeck.portfolio.fit import PortfolioFit, fit_portfolio
+    from foredeck.portfolio.fit import PortfolioFit, fit_portfolio, standardised_errors
     from foredeck.portfolio.procedure import live_through
     from foredeck.portfolio.totals import totals_table
 
@@ -192,8 +192,10 @@ def study(series: SeriesHistory | pd.Series[Any], horizon: int | None = None, *,
     closing = history.periods[-1] if closing is None else closing
     alone = examine(history, closing, options)
     procedure = live_through(alone, options.style)
-    own_fit, standardised = fit_portfolio([alone], [procedure], options)
-    fit = fit or own_fit
+    if fit is None:
+        fit, standardised = fit_portfolio([alone], [procedure], options)
+    else:
+        standardised = standardised_errors([alone], [procedure], fit.ratio, fit.nonnegative)
     tables = apply_fit(alone, procedure, fit)
     tables["adjusted"] = unadjusted(tables["forecasts"])
     tables["totals"] = totals_table([alone], [procedure], fit, standardised, tables["adjusted"], (), {"next 3": 3},

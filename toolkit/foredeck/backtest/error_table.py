@@ -229,7 +229,8 @@ def backtest(
 
     @cache
     def pattern_at(count: int) -> Pattern:
-        return pattern(prepare(values[:count]), m)
+        seen = prepare(values[:count])
+        return pattern(seen, m, used=seen)
 
     def reason(name: str, seen: Array) -> str:
         return ineligible_reason(METHODS[name].requirements, seen, m, pattern_at(seen.size))

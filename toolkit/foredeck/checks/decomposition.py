@@ -96,7 +96,19 @@ def decompose(series_or_values: SeriesHistory | pd.Series[Any] | ArrayLike,
     """
     values, length = values_of(series_or_values, season_length)
     negative = bool((values[np.isfinite(values)] < 0).any())
-    used = repaired(values, length, nonnegative=not negative)
+    return taken_apart(values, repaired(values, length, nonnegative=not negative), length)
+
+
+def taken_apart(values: Array, used: Array, length: int) -> Decomposition:
+    """Take apart values whose repairs are known already: `decompose` without its own.
+
+    Parameters
+    ----------
+    values, used : array, shape (n,)
+        Raw values, and the same repaired; NaN in the raw ones only.
+    length : int
+        Periods a year.
+    """
     trend, season = trend_and_season(used, length)
     rest = used - trend - season
     trend_strength = strength(rest, trend) if used.size >= _FEWEST else np.nan

@@ -8,7 +8,7 @@ from typing import Literal
 
 import numpy as np
 
-from foredeck.checks.decomposition import decompose, strength_text
+from foredeck.checks.decomposition import decompose, strength_text, taken_apart
 from foredeck.checks.expectation import Array
 from foredeck.checks.intermittence import (
     DemandClass,
@@ -85,7 +85,7 @@ class Pattern:
         return f"<div><p>{escape(self.words)}</p><table><tbody>{body}</tbody></table></div>"
 
 
-def pattern(values: Array, season_length: int) -> Pattern:
+def pattern(values: Array, season_length: int, *, used: Array | None = None) -> Pattern:
     """Tell what a series holds: trend, season, intermittence.
 
     Parameters
@@ -94,6 +94,8 @@ def pattern(values: Array, season_length: int) -> Pattern:
         NaN is a missing period.
     season_length : int
         Periods a year (1, 4, 12, 52).
+    used : array, shape (n,), optional
+        The values as repaired already, where the caller has them.
 
     Returns
     -------
@@ -110,7 +112,7 @@ def pattern(values: Array, season_length: int) -> Pattern:
     Syntetos, Boylan & Croston (2005), Journal of the Operational Research Society 56, 495-503;
     the interval here is periods / non-zero periods.
     """
-    parts = decompose(values, season_length)
+    parts = decompose(values, season_length) if used is None else taken_apart(values, used, season_length)
     adi, cv2 = average_demand_interval(parts.values), squared_variation(parts.values)
     rare = is_intermittent(parts.values)
     quadrant = demand_class(adi, cv2)

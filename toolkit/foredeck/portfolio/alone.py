@@ -150,7 +150,7 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
 
     # every origin needs its repaired values three times: each is made once, from what was known then
     known_then = cache(lambda n: repaired(raw[:n], m, nonnegative=options.nonnegative))
-    seen = cache(lambda n: pattern(known_then(n), m))
+    seen = cache(lambda n: pattern(known_then(n), m, used=known_then(n)))
 
     def prepare(known: Array) -> Array:
         values: Array = known_then(len(known))

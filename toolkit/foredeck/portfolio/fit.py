@@ -83,14 +83,26 @@ def fit_portfolio(alones: Sequence[Alone], procedures: Sequence[Procedure],
     season_length = alones[0].series.season_length
     largest = origin_count(season_length, options.horizon)
     ratio = error_ratio(list(alones), list(procedures), largest)
-    standardised = np.full((len(alones), largest + 1, options.horizon), np.nan)
-    for row, alone, procedure in zip(standardised, alones, procedures, strict=True):
-        scale = scales(alone, procedure, ratio, options.nonnegative)[:-1]
-        row[alone.offsets] = (alone.cube.actual - procedure.forecasts[:-1]) / scale
+    standardised = standardised_errors(alones, procedures, ratio, options.nonnegative)
     fit = PortfolioFit(style=options.style, levels=options.levels, horizon=options.horizon,
                        nonnegative=options.nonnegative, season_length=season_length, n_series=len(alones),
                        ratio=ratio, multipliers=multipliers(standardised, options.levels))
     return fit, standardised
+
+
+def standardised_errors(alones: Sequence[Alone], procedures: Sequence[Procedure], ratio: Array,
+                        nonnegative: bool) -> Array:
+    """Errors of the procedure over their scales, laid side by side by offset from the closing period.
+
+    Returns
+    -------
+    array, shape (series, largest offset + 1, horizon); NaN where none
+    """
+    errors = np.full((len(alones), len(ratio), procedures[0].forecasts.shape[1]), np.nan)
+    for row, alone, procedure in zip(errors, alones, procedures, strict=True):
+        scale = scales(alone, procedure, ratio, nonnegative)[:-1]
+        row[alone.offsets] = (alone.cube.actual - procedure.forecasts[:-1]) / scale
+    return errors
 
 
 def _numbers(fit: PortfolioFit, digits: int | None) -> dict[str, Any]:

@@ -88,18 +88,25 @@ def multipliers(standardised: Array, levels: tuple[int, ...]) -> Array:
         (offset 0: now); NaN where too few origins were known.
     """
     _, width, horizon = standardised.shape
+    shares = np.array(levels) / 100
     out = np.full((width, len(levels), 2, horizon), np.nan)
+    independent = np.full((width, horizon), np.nan)
     for offset in range(width):
         together = _together(standardised, offset)
         for lead in range(horizon):
             pooled, origins = _known(standardised, offset, lead)
-            if origins < MIN_ORIGINS:
-                # what is not known is not surer than the shorter lead
-                out[offset, :, :, lead] = (out[offset, :, :, lead - 1] * np.sqrt((lead + 1) / lead) if lead
-                                           else _without_errors(levels) if offset == 0 else np.nan)
-                continue
-            for at, level in enumerate(levels):
-                out[offset, at, :, lead] = _both_sides(pooled, level / 100, origins * together)
+            if origins >= MIN_ORIGINS:
+                out[offset, :, :, lead] = _both_sides(pooled, shares)
+                independent[offset, lead] = origins * together
+    middle = (1 + shares)[:, None, None] / 2
+    widen = stats.t.ppf(middle, np.maximum(independent, 2.0)) / stats.norm.ppf(middle)
+    out *= np.moveaxis(widen, 0, 1)[:, :, None, :]
+    for lead in range(horizon):
+        gap = np.isnan(out[:, 0, 0, lead])
+        # what is not known is not surer than the shorter lead
+        out[gap, :, :, lead] = out[gap, :, :, lead - 1] * np.sqrt((lead + 1) / lead) if lead else np.nan
+        if lead == 0 and gap[0]:
+            out[0, :, :, 0] = _without_errors(levels)
     return out
 
 
@@ -150,10 +157,8 @@ def mean_correlation(rows: Array) -> float:
     return float(np.clip(((unit.sum(axis=0) ** 2).mean() - n) / (n * (n - 1)), 0.0, 1.0))
 
 
-def _both_sides(pooled: Array, level: float, independent: float) -> Array:
-    """Mean of symmetric and asymmetric quantiles, widened when few independent errors stand behind them."""
-    symmetric = np.quantile(np.abs(pooled), level)
-    lower, upper = np.quantile(pooled, [(1 - level) / 2, (1 + level) / 2])
-    middle = (1 + level) / 2
-    widen = stats.t.ppf(middle, max(independent, 2.0)) / stats.norm.ppf(middle)
-    return np.asarray(np.maximum([(symmetric - lower) / 2, (symmetric + upper) / 2], 0.0) * widen)
+def _both_sides(pooled: Array, shares: Array) -> Array:
+    """Mean of symmetric and asymmetric quantiles, shape (levels, 2): lower and upper, both positive."""
+    symmetric = np.quantile(np.abs(pooled), shares)
+    lower, upper = np.quantile(pooled, np.array([(1 - shares) / 2, (1 + shares) / 2]))
+    return np.maximum(np.stack([symmetric - lower, symmetric + upper], axis=1) / 2, 0.0)
