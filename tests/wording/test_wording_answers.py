@@ -89,8 +89,14 @@ def test_adjustments_and_the_rest_of_the_change_add_up():
     assert sum(parts) == 60
 
 
+def test_a_change_made_by_adjustments_alone_is_told_as_such():
+    words = told(given(frequency="quarterly", horizon=3))["Why has it changed?"]
+    assert words.endswith("The third quarter came to 1,629, as was said. All of the change comes from adjustments.")
+
+
 @pytest.mark.parametrize(("options", "words"), [
-    ({"previous": False}, "First round Nothing was said before, so there is nothing to compare with."),
+    ({"previous": False}, "nothing to compare with. An adjustment of +40 is included."),
+    ({"previous": False, "adjusted": False}, "First round Nothing was said before, so there is nothing to compare"),
     ({"adjusted": False}, "no adjustment has changed"),
 ])
 def test_without_an_earlier_round_or_an_adjustment_no_cause_is_invented(options, words):

@@ -185,10 +185,12 @@ class _Outlook:
         shown = self.past[(self.past["at"] >= begin) & self.past["used"].notna()]
         if shown.empty:
             return []
-        # Half the width of both labels, in periods: a label so far from a repair's does not touch it.
-        reach = (50 if short else 100) * (self.last - begin + 1) / (230 if short else 690)
+        # The width of this label and half of a repair's, in periods: so far apart they do not touch. The first
+        # point is no peak, as the line may come from higher up.
+        reach = (60 if short else 175) * (self.last - begin + 1) / (230 if short else 690)
         mended = shown.loc[shown["repaired"], "at"]
         clear = shown[[not (mended - at).abs().lt(reach).any() for at in shown["at"]]]
+        clear = clear[clear["at"] > shown["at"].iloc[0]]
         around = shown["used"].rolling(3, center=True, min_periods=2)
         peaks = clear[clear["used"] >= around.max().loc[clear.index]]
         troughs = clear[clear["used"] <= around.min().loc[clear.index]]

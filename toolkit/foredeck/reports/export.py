@@ -1,7 +1,9 @@
 """From an executed notebook to a page: nbconvert with foredeck's template, checked.
 
 The template's conf.json names `FinishPage`, so that stock nbconvert does the same:
-`jupyter nbconvert --to html --template foredeck-report out.ipynb`.
+`jupyter nbconvert --to html --template foredeck-report out.ipynb`. An installed wheel puts the template where
+nbconvert looks; from a checkout, name the folder:
+`--TemplateExporter.extra_template_basedirs=templates`.
 """
 
 from __future__ import annotations

@@ -9,7 +9,7 @@ from typing import Any
 import pandas as pd
 
 from foredeck.charts.outlook_chart import outlook as outlook_chart
-from foredeck.periods import parse_period, period_name
+from foredeck.periods import Frequency, parse_period, period_name
 from foredeck.reports.fragments import Section, paragraph, say
 from foredeck.reports.page_texts import text
 from foredeck.study import Study
@@ -46,7 +46,7 @@ def outlook(study: Study) -> Section | None:
 def period_cell(period: str, facts: SeriesFacts) -> Cell:
     """Write a period as the head of a row."""
     short = short_name(period, facts.frequency)
-    return Cell(long_name(period, facts.frequency) if facts.frequency.value == "monthly" else short, narrow=short)
+    return Cell(long_name(period, facts.frequency) if facts.frequency is Frequency.MONTHLY else short, narrow=short)
 
 
 def _columns(study: Study, facts: SeriesFacts) -> list[Column]:
@@ -106,7 +106,8 @@ def _totals(study: Study, facts: SeriesFacts) -> list[dict[str, Any]]:
         if study.previous is not None:
             said = study.previous.adjusted[study.previous.adjusted["period"].isin(inside)]
             before = float(said["adjusted"].sum()) if len(said) == len(inside) else math.nan
-        names = {k: long_name(str(row[k]), facts.frequency) for k in ("first", "last")}
+        told = long_name if facts.frequency is Frequency.MONTHLY else short_name
+        names = {k: told(str(row[k]), facts.frequency) for k in ("first", "last")}
         short = {k: short_name(str(row[k]), facts.frequency).split(" ")[0] for k in ("first", "last")}
         made: dict[str, Any] = {
             "period": Cell(upper_first(text("together", **names)), narrow=text("together short", **short)),

@@ -151,17 +151,25 @@ def _why(facts: SeriesFacts) -> Answer:
             return Answer(question, say("why not said"), "", "",
                           say("why not said text", round=facts.previous_round, when=when))
         key = "why none" if facts.round else "why alone"
-        return Answer(question, say(key), "", "", say(f"{key} text"))
+        adjusted = facts.figures.nice(facts.adjustment) != 0
+        included = say("why included", size=signed(facts.adjustment, facts.decimals)) if adjusted else ""
+        return Answer(question, say(key), "", "", say(f"{key} text") + included)
     size = facts.figures.nice(facts.change)
     added = facts.figures.nice(facts.adjustment - facts.previous_adjustment)
-    split = say("why no adjustment")
-    if added != 0:
-        split = say("why split", baseline=facts.figures.signed(facts.change - added),
-                    adjustment=facts.figures.signed(added))
+    split = split_words(facts, facts.change, added)
     if size == 0 and added == 0:
         return Answer(question, say("why same"), "", "", _surprise(facts))
     big = say("why more" if size > 0 else "why less", size=facts.figures.text(abs(size))) if size else say("why same")
     return Answer(question, big, say("why small") if size else "", _surprise(facts), split)
+
+
+def split_words(facts: SeriesFacts, change: float, added: float) -> str:
+    """Split a change into what adjustments added and the rest; both as shown, so that they add up."""
+    if added == 0:
+        return say("why no adjustment")
+    if facts.figures.nice(change - added) == 0:
+        return say("why only adjustments")
+    return say("why split", baseline=facts.figures.signed(change - added), adjustment=facts.figures.signed(added))
 
 
 def _surprise(facts: SeriesFacts) -> str:

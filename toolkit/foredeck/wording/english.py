@@ -87,6 +87,8 @@ _HEAD = {
     "why last below": "{last} came to {actual}, {miss} below what was said.",
     "why last as said": "{last} came to {actual}, as was said.",
     "why split": "New actuals and estimates make {baseline} of the change, adjustments {adjustment}.",
+    "why only adjustments": "All of the change comes from adjustments.",
+    "why included": " An adjustment of {size} is included.",
     "why no adjustment": "All of the change comes from new actuals and estimates; no adjustment has changed.",
     "trust big": "{inside} of {n}", "trust small": "in range",
     "trust lead": "{inside} of the last {n} held;",

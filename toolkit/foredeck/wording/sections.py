@@ -5,7 +5,7 @@ from __future__ import annotations
 import pandas as pd
 
 from foredeck.periods import parse_period, period_name
-from foredeck.wording.answers import typical_miss
+from foredeck.wording.answers import split_words, typical_miss
 from foredeck.wording.catalogue import one_or_many, say, upper_first
 from foredeck.wording.dates import long_name, near_name
 from foredeck.wording.facts import SeriesFacts, is_known
@@ -123,8 +123,7 @@ def changed_words(facts: SeriesFacts, changes: pd.DataFrame) -> str:
     parts = [say("changed say", when=near_name(first["period"], facts.frequency), round=facts.previous_round,
                  before=write.text(first["before"]), now=write.text(first["now"]))]
     if write.nice(first["adjustment"]) != 0:
-        added = write.nice(first["adjustment"])
-        parts.append(say("why split", baseline=write.signed(first["change"] - added), adjustment=write.signed(added)))
+        parts.append(split_words(facts, float(first["change"]), write.nice(first["adjustment"])))
     most = changes.iloc[int(changes["change"].abs().to_numpy().argmax())]
     if most["period"] != first["period"]:
         parts.append(say("changed most", when=long_name(most["period"], facts.frequency),
