@@ -37,7 +37,7 @@
     if (typeof marker.size === "number") marker.size *= scale;
     if (marker.line && typeof marker.line.width === "number") marker.line.width *= 0.85;
   }
-  function drawOne(slot, spec, width, printed) {
+  function drawOne(slot, spec, width, printed, first) {
     var figure = JSON.parse(coloured(spec)), layout = figure.layout;
     layout.template = JSON.parse(coloured(theme));
     if (width < 560) {
@@ -47,13 +47,14 @@
       if (scale) figure.data.forEach(function (trace) { shrink(trace, scale); });
     }
     layout.width = width;
-    if (printed) layout.height = Math.round(layout.height * 0.8);
+    /* The first chart is lowest on paper, so that it stands on page 1 under the answers. */
+    if (printed) layout.height = Math.round(layout.height * (first ? 0.68 : 0.8));
     slot.style.minHeight = layout.height + "px";
     var config = Object.assign({ staticPlot: printed }, options);
     window.Plotly.react(slot, figure.data, layout, config);
   }
   function draw(printed) {
-    slots.forEach(function (slot, i) { drawOne(slot, specs[i], printed ? 640 : slot.clientWidth, printed); });
+    slots.forEach(function (slot, i) { drawOne(slot, specs[i], printed ? 640 : slot.clientWidth, printed, i === 0); });
     document.documentElement.dataset.charts = String(slots.length);
   }
   var waiting;

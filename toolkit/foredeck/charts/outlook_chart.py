@@ -16,8 +16,8 @@ from foredeck.charts.theme import colour, role
 from foredeck.charts.time_axis import SHOWN, TimeAxis
 
 HEIGHT, TOP, FOOT, RIGHT = 420, 26, 40, 108
-GAP, GAP_SHORT = 21, 17
-"""Pixels between labels; wide charts are printed at four fifths of their height."""
+GAP, GAP_SHORT = 22, 17
+"""Pixels between labels; the first chart of a page is printed at two thirds of its height."""
 
 
 def outlook(study: StudyLike, write: Callable[[float], str] | None = None, id: str = "outlook") -> Figure:
