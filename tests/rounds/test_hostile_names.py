@@ -92,6 +92,26 @@ def test_a_real_browser_runs_nothing_of_them(pack: Path) -> None:
             assert complaints == []
 
 
+@pytest.mark.parametrize("width", [1280, 390])
+def test_every_chart_is_drawn_and_no_page_scrolls_sideways(pack: Path, width: int) -> None:
+    for page in [pack / "cover.html", *(pack / "reports").glob("*.html")]:
+        with opened(page, width=width) as (tab, complaints):
+            wanted = tab.locator("[data-chart]").count()
+            drawn = "n => document.querySelectorAll('[data-chart] .main-svg .cartesianlayer').length >= n"
+            tab.wait_for_function(drawn, arg=wanted)
+            assert wanted >= 4 or page.name == "cover.html"
+            assert tab.evaluate("document.documentElement.scrollWidth") <= width
+            assert complaints == []
+
+
+def test_without_script_every_sentence_and_table_is_there(pack: Path) -> None:
+    page = next(p for p in (pack / "reports").glob("*.html") if "etc" not in p.name)
+    with opened(page, script=False) as (tab, _):
+        assert tab.locator("h1").inner_text().startswith("Expect about ")
+        assert tab.locator("main table").count() >= 6
+        assert tab.locator("[data-chart]").first.is_hidden()
+
+
 def test_the_workbook_holds_them_as_text(pack: Path) -> None:
     book = openpyxl.load_workbook(pack / "forecasts.xlsx")
     cells = [cell for sheet in book for row in sheet.iter_rows() for cell in row if isinstance(cell.value, str)]
