@@ -32,7 +32,6 @@ LABELS: dict[str, str] = {
     "season alt": "Season: highest in {top} at {top_value} of 100, lowest in {low} at {low_value}.",
     "season used": "as forecast", "season back": "{count} earlier",
     "season earlier": "earlier years", "season latest": "latest year",
-    "season average": "average {noun}",
     "weight lead": "How much each past {noun} counts", "weight rest": "in the level of “{method}”, out of 100; "
         "newest at the right.",
     "weight alt": "Weights of past {plural}: the newest counts {first} of 100, the newest three {three}.",
@@ -55,7 +54,6 @@ LABELS: dict[str, str] = {
     "strip said": "last round said {value}", "strip said short": "last round {value}",
     "strip range": ", {level} {lower} to {upper}",
     "picture alt": "{name}: last actual {actual}, next forecast {forecast} {unit}{range}.",
-    "total alt": "Forecast {value}, {level} {lower} to {upper}; last year {past}.",
 }
 
 

@@ -8,7 +8,6 @@ TEXTS: dict[str, str] = {
     "closed": "books closed at the end of {when}",
     "strip caption": "{when} on one scale: the range, the forecast, a year before and last round.",
     "contents": "In this report", "skip": "Skip to the report",
-    "off": "The chart could not be drawn; its numbers are in the table below it.",
     "period yearly": "Year", "period quarterly": "Quarter", "period monthly": "Month", "period weekly": "Week",
     "last year": "Last\nyear", "last round": "Last\nround", "forecast": "Forecast", "adjusted by": "of "
         "which\nadjusted",
@@ -18,8 +17,8 @@ TEXTS: dict[str, str] = {
     "changed rest": "Every figure is rounded to what the ranges support; changes are between the figures shown.",
     "people lead": "Adjustments in this round, {unit}.",
     "people rest": "The range moves with the figure; baseline and adjusted forecast are scored apart.",
-    "baseline": "Baseline", "adjustment": "Change", "adjusted": "Adjusted", "who": "Who", "reason": "Reason",
-    "hits": "Applies to", "kind": "Kind",
+    "baseline": "Baseline", "adjustment": "Change", "adjusted": "Adjusted",
+    "who": "Who", "reason": "Reason", "kind": "Kind",
     "findings lead": "Findings and what was done.",
     "findings rest": "Repairs are used for fitting only; the raw value is kept.",
     "finding": "Finding", "raw": "Raw", "used": "Used", "remedy": "What was done", "evidence": "Evidence",

@@ -4,10 +4,9 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from foredeck.periods import Frequency
 from foredeck.wording.catalogue import say, upper_first
 from foredeck.wording.dates import long_name, near_name
-from foredeck.wording.facts import Said, SeriesFacts, is_known
+from foredeck.wording.facts import SeriesFacts, is_known
 from foredeck.wording.levels import benchmark_name, level_name, outside_words
 from foredeck.wording.numbers import percent, plain, signed, whole
 
@@ -206,11 +205,3 @@ def typical_miss(facts: SeriesFacts) -> str:
                    other=facts.figures_of_misses.text(tried.benchmark_miss))
     key = "trust miss same" if abs(share) < 0.005 else "trust miss better" if share > 0 else "trust miss worse"
     return say(key, miss=miss, unit=facts.unit, share=percent(abs(share)), benchmark=benchmark)
-
-
-def range_words(facts: SeriesFacts, said: Said, frequency: Frequency) -> str:
-    """Say a forecast with its outer range, for a chart's alternative text."""
-    text = f"{facts.figures.text(said.value)} {facts.unit}"
-    if is_known(said.lower):
-        text += f", {level_name(facts.outer)} {facts.edges.between(said.lower, said.upper)}"
-    return f"{long_name(facts.next_period, frequency)}: {text}"

@@ -20,9 +20,6 @@ _NAMES = {
     "range 95": "19-in-20 range", "range other": "{level}-in-100 range",
     "outside 50": "One {noun} in two", "outside 80": "One {noun} in five", "outside 90": "One {noun} in ten",
     "outside 95": "One {noun} in 20", "outside other": "About {rest} {plural} in 100",
-    "hits 50": "half of {plural} like this", "hits 80": "eight {plural} in ten like this",
-    "hits 90": "nine {plural} in ten like this", "hits 95": "19 {plural} in 20 like this",
-    "hits other": "{level} {plural} in 100 like this",
     "same as last": "same as the last value",
     "same as yearly": "same as the year before", "same as other": "same as last year",
     "fault|1": "one fault", "fault|n": "{words} faults", "query|1": "one query", "query|n": "{words} queries",
@@ -102,7 +99,6 @@ _HEAD = {
     "trust unranged": "Not yet known", "trust unranged text": "No range could be tried on this series yet.",
     "trust none": "Not tried",
     "trust none text": "The history is too short to forecast it again from past {plural}: treat the range with care.",
-    "strip caption": "{when} on one scale: the range, the forecast, a year before and last round.",
 }
 
 _SECTIONS = {
@@ -124,7 +120,6 @@ _SECTIONS = {
     "outlook no totals": "Ranges of single {plural} do not add up to the range of several.",
     "trust title": "How far to trust it",
     "trust sub": "Tried from {origins} past {plural}, each time with only what was known then",
-    "trust say": "One {noun} ahead the forecast typically misses by {miss} {unit}.",
     "trust say against": "One {noun} ahead the forecast typically misses by {miss} {unit}, against {other} for "
         "“{benchmark}”.",
     "trust better all": "It stays ahead at every distance tried.",
@@ -179,7 +174,6 @@ _SECTIONS = {
     "strength unknown": "Cannot tell",
     "strength of": "({value} of 1)",
     "method lead": "The method in plain words.",
-    "method blend": "The figures shown are a blend of {count} methods.",
     "numbers title": "Numbers", "numbers sub": "All actuals on record",
     "numbers sub cut": "Actuals of the last {count} years",
     "numbers repaired": "□ marks a period whose value was repaired for fitting; the raw value is shown.",

@@ -128,7 +128,6 @@ class SeriesFacts:
     n_periods: int
     reason: str
     intermittent: bool
-    seasonal: bool
     busy_share: float
     next_period: str
     ahead: Said
@@ -232,12 +231,10 @@ def facts_of(study: StudyLike) -> SeriesFacts:
     whole = bool((known == known.round()).all())
     size = float(known.abs().median()) if len(known) else NAN
     width = ahead.upper - ahead.lower
-    strength = study.info.get("season_strength", NAN)
     return SeriesFacts(
         name=study.name, round=str(study.round or ""), unit=study.unit, frequency=frequency, closing=study.closing,
         outer=outer, inner=inner, n_periods=len(study.actuals), reason=reason,
         intermittent=str(study.info.get("demand_class")) in ("intermittent", "lumpy"),
-        seasonal=frequency.season_length > 1 and strength is not None and float(strength) > 0.64,
         busy_share=float((known > 0).mean()) if len(known) else NAN,
         next_period=next_period, ahead=ahead,
         figures=Rounding.supported_by(width, size, whole and abs(ahead.value) >= 10),
