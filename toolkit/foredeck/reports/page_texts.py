@@ -9,8 +9,8 @@ TEXTS: dict[str, str] = {
     "strip caption": "{when} on one scale: the range, the forecast, a year before and last round.",
     "contents": "In this report", "skip": "Skip to the report",
     "period yearly": "Year", "period quarterly": "Quarter", "period monthly": "Month", "period weekly": "Week",
-    "last year": "Last\nyear", "last round": "Last\nround", "forecast": "Forecast", "adjusted by": "of "
-        "which\nadjusted",
+    "last year": "Last\nyear", "last round": "Last\nround", "forecast": "Forecast",
+    "adjusted by": "of which\nadjusted",
     "together": "{first} to {last} together", "together short": "{first} to {last}",
     "this round": "This\nround", "change": "Change", "of which adjusted": "of which\nadjusted",
     "changed lead": "What last round said and what this one says, {unit}.",
