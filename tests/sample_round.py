@@ -16,7 +16,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from foredeck.study import Previous, RoundView, Study
+from foredeck.studies import Previous, RoundView, Study
 
 HOSTILE = "<script>alert(1)</script>/../x"
 SEASONAL = "north/compost"

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from foredeck.backtest.choice import choose, equal_weights, relative_errors
+from foredeck.backtests.choice import choose, equal_weights, relative_errors
 from foredeck.errors import ShapeError
 
 METHODS = ("naive", "seasonal_naive", "ses", "holt", "damped_holt")

@@ -6,8 +6,8 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from foredeck.backtest.error_table import Cube, backtest, build_cube, summary
-from foredeck.backtest.measures import mase_scale
+from foredeck.backtests.error_table import Cube, backtest, build_cube, summary
+from foredeck.backtests.measures import mase_scale
 from foredeck.errors import MethodError, ShapeError
 from foredeck.intake.history import SeriesHistory
 from foredeck.periods import Frequency

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from foredeck.backtest.measures import bias, mae, mape, mase, mase_scale, mse, rmse, smape
+from foredeck.backtests.measures import bias, mae, mape, mase, mase_scale, mse, rmse, smape
 from foredeck.errors import ShapeError
 
 ACTUAL = np.array([[10.0, 20.0, np.nan], [0.0, 5.0, 8.0]])

@@ -6,7 +6,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from foredeck.backtest.origins import known_counts
+from foredeck.backtests.origins import known_counts
 from foredeck.errors import MethodError
 
 

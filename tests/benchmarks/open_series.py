@@ -19,7 +19,7 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from foredeck.backtest.measures import mase_scale
+from foredeck.backtests.measures import mase_scale
 from foredeck.intake.history import SeriesHistory
 from foredeck.periods import Frequency
 from foredeck.portfolio.alone import Alone, ForecastOptions, examine

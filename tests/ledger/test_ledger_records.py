@@ -10,7 +10,7 @@ import pytest
 
 from foredeck.errors import LedgerError
 from foredeck.ledger.store import open_ledger
-from foredeck.study import TABLES
+from foredeck.studies import TABLES
 from ledger.invented_rounds import NAMES, assert_reads_back, invented, record
 
 HOSTILE = ("x'; DROP TABLE rounds; --", "../../etc/passwd", "<script>alert(1)</script>", "=1+1",

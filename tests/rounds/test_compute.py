@@ -18,7 +18,7 @@ from foredeck.rounds import compute as passes
 from foredeck.rounds.compute import Computed, compute_round, data_fingerprint
 from foredeck.rounds.source import closing_of
 from foredeck.settings import Settings, load_settings
-from foredeck.study import TABLES, study
+from foredeck.studies import TABLES, study
 
 
 def quiet(*_: Any) -> None:

@@ -17,7 +17,7 @@ from small_round import SERIES, write_folder
 from foredeck.ledger.store import open_ledger
 from foredeck.pack.file_names import file_name
 from foredeck.pack.manifest import verify
-from foredeck.study import TABLES
+from foredeck.studies import TABLES
 
 KILLS = 10
 COMMAND = [sys.executable, "-c", "from foredeck.cli.app import main; main()", "round", "--settings"]

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from foredeck.backtest.measures import bias, mae, mape, mase, mase_scale, rmse
+from foredeck.backtests.measures import bias, mae, mape, mase, mase_scale, rmse
 from foredeck.errors import MethodError
 from foredeck.smoothing.benchmarks import equal_age_alpha
 from foredeck.smoothing.catalogue import fit, smooth

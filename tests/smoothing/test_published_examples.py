@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from foredeck.backtest.measures import bias, mae, mape, mase_scale, mse, rmse
+from foredeck.backtests.measures import bias, mae, mape, mase_scale, mse, rmse
 from foredeck.smoothing.catalogue import fit, smooth
 from references.open_data import values
 

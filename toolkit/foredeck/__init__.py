@@ -19,8 +19,8 @@ _HOMES = {
     "decompose": "foredeck.checks.decomposition",
     "difference": "foredeck.checks.differencing",
     "smooth": "foredeck.smoothing.catalogue",
-    "backtest": "foredeck.backtest.error_table",
-    "study": "foredeck.study",
+    "backtest": "foredeck.backtests.error_table",
+    "study": "foredeck.studies",
     "open_ledger": "foredeck.ledger.store",
 }
 _ROOMS = ("charts",)

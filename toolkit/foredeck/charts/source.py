@@ -17,7 +17,7 @@ class PreviousLike(Protocol):
 
 
 class StudyLike(Protocol):
-    """The parts of a study that charts need; `foredeck.study.Study` has them."""
+    """The parts of a study that charts need; `foredeck.studies.Study` has them."""
 
     @property
     def name(self) -> str:

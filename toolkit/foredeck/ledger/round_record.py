@@ -13,7 +13,7 @@ import pandas as pd
 from foredeck.errors import LedgerError
 from foredeck.ledger import files
 from foredeck.ledger.files import StoredFile
-from foredeck.study import TABLES, Previous, RoundView, Study
+from foredeck.studies import TABLES, Previous, RoundView, Study
 
 
 @dataclass(frozen=True)
@@ -66,7 +66,7 @@ class RoundRecord:
         Parameters
         ----------
         name : str
-            One of `foredeck.study.TABLES`.
+            One of `foredeck.studies.TABLES`.
         series : str, optional
             Only this series is read from the disk. For `totals`, its own totals. A name
             that the table does not hold gives no rows.

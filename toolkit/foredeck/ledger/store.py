@@ -136,7 +136,7 @@ class Ledger(RoundsHeld):
         round : str
             Its last closed period, which also tells the frequency: "2026-10".
         tables : mapping of name to DataFrame
-            Every table of `foredeck.study.TABLES`. Rows keep their order; one series is
+            Every table of `foredeck.studies.TABLES`. Rows keep their order; one series is
             quick to read when tables are ordered by series.
         portfolio : mapping
             The portfolio fit, as JSON; `horizon` and `levels` are needed.

@@ -13,7 +13,7 @@ import pandas as pd
 
 from foredeck.errors import LedgerError, PeriodError
 from foredeck.periods import Frequency, parse_period
-from foredeck.study import TABLES
+from foredeck.studies import TABLES
 
 _NEEDED_COLUMNS = {"actuals": ("series", "period", "raw"), "totals": ("scope", "member")}
 

@@ -12,7 +12,7 @@ import pyarrow.parquet as pq
 
 from foredeck.errors import SettingsError
 from foredeck.pack.sheets import forecast_table
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 
 FORMATS = ("parquet", "csv")
 

@@ -11,7 +11,7 @@ from typing import Any
 import pandas as pd
 
 from foredeck.errors import ReportError
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 
 NAME = "manifest.json"
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import pandas as pd
 
 from foredeck.reports.cover_facts import group_columns, silent_series
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 
 
 @dataclass(frozen=True)

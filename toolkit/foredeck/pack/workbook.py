@@ -19,7 +19,7 @@ import xlsxwriter
 
 from foredeck.pack.sheets import Sheet, sheets
 from foredeck.reports.cover_record import cautions as standard_cautions
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 
 MOST_ROWS = 1_048_575
 """Rows of data on one sheet: Excel's limit of 1,048,576 less the heading; more go on to a further sheet."""

@@ -15,8 +15,8 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from foredeck.backtest.error_table import Cube, build_cube
-from foredeck.backtest.measures import mase_scale
+from foredeck.backtests.error_table import Cube, build_cube
+from foredeck.backtests.measures import mase_scale
 from foredeck.checks.differencing import difference
 from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern
 from foredeck.checks.findings import find

@@ -1,7 +1,7 @@
 """Pass 3: the portfolio fit applied to each series again.
 
 Cheap: nothing is fitted here. The result is the part of a round's tables (see
-`foredeck.study.TABLES`) that belongs to the series.
+`foredeck.studies.TABLES`) that belongs to the series.
 """
 
 from __future__ import annotations
@@ -12,7 +12,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from foredeck.backtest.error_table import summary
+from foredeck.backtests.error_table import summary
 from foredeck.periods import period_name
 from foredeck.portfolio.alone import Alone
 from foredeck.portfolio.fit import PortfolioFit

@@ -12,8 +12,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from foredeck.backtest.choice import choose, equal_weights
-from foredeck.backtest.error_table import Cube
+from foredeck.backtests.choice import choose, equal_weights
+from foredeck.backtests.error_table import Cube
 from foredeck.portfolio.alone import Alone
 
 Array = NDArray[np.float64]

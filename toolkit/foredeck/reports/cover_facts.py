@@ -11,7 +11,7 @@ import pandas as pd
 
 from foredeck.periods import Frequency, parse_period, period_name
 from foredeck.review.last_time import SAID_BY_ROUND, last_time
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 from foredeck.wording.facts import NAN, Said, said
 from foredeck.wording.numbers import Rounding
 

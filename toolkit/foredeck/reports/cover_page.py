@@ -37,7 +37,7 @@ from foredeck.reports.fragments import say as opening
 from foredeck.reports.series_head import answers_html
 from foredeck.review.changes import changes as changes_since
 from foredeck.review.watch import watch_list
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 from foredeck.tables.html import Cell, Column, pairs, table
 from foredeck.wording.catalogue import upper_first
 from foredeck.wording.dates import long_name, near_name

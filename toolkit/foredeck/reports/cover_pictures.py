@@ -13,7 +13,7 @@ from foredeck.reports.cover_cells import DrawnCell, address, as_is, frame_of, sh
 from foredeck.reports.cover_facts import CoverFacts, group_columns
 from foredeck.reports.cover_texts import say
 from foredeck.reports.cover_words import share_text
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 from foredeck.tables.html import Cell, Column, table
 from foredeck.wording.dates import long_name
 from foredeck.wording.levels import level_name

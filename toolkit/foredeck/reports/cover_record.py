@@ -5,7 +5,7 @@ from __future__ import annotations
 from foredeck.periods import Frequency
 from foredeck.reports.cover_texts import say
 from foredeck.reports.page_texts import text
-from foredeck.study import RoundView
+from foredeck.studies import RoundView
 from foredeck.wording import catalogue
 from foredeck.wording.dates import long_name
 

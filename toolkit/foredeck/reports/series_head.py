@@ -8,7 +8,7 @@ from foredeck.charts.pictures import Picture
 from foredeck.charts.strip_picture import strip
 from foredeck.reports.fragments import Head
 from foredeck.reports.page_texts import text
-from foredeck.study import Study
+from foredeck.studies import Study
 from foredeck.wording.answers import Answer, answers, headline
 from foredeck.wording.catalogue import upper_first
 from foredeck.wording.dates import long_name

@@ -13,7 +13,7 @@ from foredeck.charts.trust_chart import trust as trust_chart
 from foredeck.charts.weight_chart import weights as weights_chart
 from foredeck.reports.fragments import Part, Section, paragraph, say
 from foredeck.reports.page_texts import text
-from foredeck.study import Study
+from foredeck.studies import Study
 from foredeck.tables.html import Column, pairs, table
 from foredeck.wording.catalogue import method_name, upper_first
 from foredeck.wording.catalogue import say as words

@@ -12,7 +12,7 @@ from foredeck.charts.outlook_chart import outlook as outlook_chart
 from foredeck.periods import Frequency, parse_period, period_name
 from foredeck.reports.fragments import Section, paragraph, say
 from foredeck.reports.page_texts import text
-from foredeck.study import Study
+from foredeck.studies import Study
 from foredeck.tables.html import Cell, Column, table
 from foredeck.wording.catalogue import say as words
 from foredeck.wording.catalogue import upper_first

@@ -11,7 +11,7 @@ from foredeck.charts.last_time_chart import last_time as last_time_chart
 from foredeck.reports.fragments import Part, Section, paragraph, say
 from foredeck.reports.page_texts import TEXTS, text
 from foredeck.reports.series_outlook import period_cell
-from foredeck.study import Study
+from foredeck.studies import Study
 from foredeck.tables.html import Cell, Column, table
 from foredeck.wording.catalogue import say as words
 from foredeck.wording.facts import SeriesFacts, facts_of, is_known

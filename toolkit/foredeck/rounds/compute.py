@@ -23,7 +23,7 @@ from foredeck.review.adjustment_file import read_adjustments
 from foredeck.review.adjustments import apply_adjustments
 from foredeck.review.comparisons import read_comparison
 from foredeck.settings import Settings
-from foredeck.study import TABLES, empty_table, unadjusted, versions
+from foredeck.studies import TABLES, empty_table, unadjusted, versions
 
 Progress = Callable[[str, int, int], None]
 """Called with the stage, how many are done, and how many there are."""

@@ -25,7 +25,7 @@ from foredeck.rounds.compute import Progress, compute_round, data_fingerprint, m
 from foredeck.rounds.publish import Published, publish
 from foredeck.rounds.source import closing_of
 from foredeck.settings import Settings
-from foredeck.study import versions
+from foredeck.studies import versions
 
 NEEDS_A_PERSON = 4
 REPORT_FAILED = 6

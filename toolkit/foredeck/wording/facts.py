@@ -30,7 +30,7 @@ class PreviousLike(Protocol):
 
 
 class StudyLike(Protocol):
-    """The parts of a study that sentences need; `foredeck.study.Study` has them."""
+    """The parts of a study that sentences need; `foredeck.studies.Study` has them."""
 
     @property
     def name(self) -> str:

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from foredeck.backtest.measures import mean_of
+from foredeck.backtests.measures import mean_of
 from foredeck.errors import ShapeError
 from foredeck.smoothing.catalogue import METHODS
 

@@ -11,9 +11,9 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
-from foredeck.backtest.choice import relative_errors
-from foredeck.backtest.measures import mase_scale, mean_of
-from foredeck.backtest.origins import known_counts
+from foredeck.backtests.choice import relative_errors
+from foredeck.backtests.measures import mase_scale, mean_of
+from foredeck.backtests.origins import known_counts
 from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern
 from foredeck.checks.repairs import repaired
 from foredeck.errors import MethodError, ShapeError
