@@ -5,7 +5,7 @@ VENV := .venv
 BIN := $(VENV)/bin
 WORKSPACE := workspace
 
-.PHONY: round test benchmark clean
+.PHONY: round test clean
 
 round: $(VENV)/.installed
 	@test -f $(WORKSPACE)/settings.toml || $(BIN)/foredeck start $(WORKSPACE)
@@ -16,10 +16,11 @@ test: $(VENV)/.installed-test
 	$(BIN)/ruff check .
 	$(BIN)/mypy
 	$(BIN)/lint-imports
-	$(BIN)/pytest
+	$(BIN)/pytest --numprocesses 2 --dist loadgroup
 	$(BIN)/pytest --nbval-lax notebooks --no-header -q
 
-$(VENV)/.installed: pyproject.toml constraints.txt
+# templates are copied to where stock nbconvert looks, so a changed one is installed again
+$(VENV)/.installed: pyproject.toml constraints.txt $(wildcard templates/*/*)
 	$(PYTHON) -m venv $(VENV)
 	$(BIN)/pip install --quiet --disable-pip-version-check -c constraints.txt -e .
 	touch $@

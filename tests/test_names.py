@@ -27,5 +27,5 @@ def test_functions_stay_functions_after_their_rooms_were_imported() -> None:
 
 
 def test_a_wrong_name_is_told_with_the_right_ones() -> None:
-    with pytest.raises(AttributeError, match="no attribute 'forecast'; it offers .*read, decompose"):
+    with pytest.raises(AttributeError, match=r"no attribute 'forecast'; it offers .*read, decompose"):
         _ = fd.forecast

@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from foredeck.errors import ReportError
+from foredeck.reports import quick_import  # noqa: F401  (before papermill, which imports nbformat)
 
 CELL_SECONDS, START_SECONDS = 600, 120
 

@@ -15,6 +15,9 @@ from importlib.resources import files
 from pathlib import Path
 from typing import Any, Literal
 
+# isort: off
+from foredeck.reports import quick_import  # noqa: F401  (before nbconvert, which imports nbformat)
+# isort: on
 from nbconvert.exporters import HTMLExporter
 from nbconvert.preprocessors import Preprocessor
 from nbformat import NotebookNode
