@@ -4,8 +4,10 @@ from __future__ import annotations
 
 import difflib
 import sys
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from pathlib import Path
+from tempfile import TemporaryDirectory
 from typing import Any
 
 from foredeck.errors import ReportError
@@ -57,11 +59,12 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
 
     partly = out.with_name(f"{out.stem}.part.ipynb")
     try:
-        execute_notebook(
-            str(notebook), str(partly), dict(parameters), kernel_name="python3", progress_bar=False, log_output=False,
-            start_timeout=START_SECONDS, execution_timeout=cell_seconds, request_save_on_cell_execute=False,
-            autosave_cell_every=0, shutdown_kernel="immediate", config=_kernel_config(),
-            cwd=None if folder is None else str(folder))
+        with _own_sockets() as config:
+            execute_notebook(
+                str(notebook), str(partly), dict(parameters), kernel_name="python3", progress_bar=False,
+                log_output=False, start_timeout=START_SECONDS, execution_timeout=cell_seconds,
+                request_save_on_cell_execute=False, autosave_cell_every=0, shutdown_kernel="immediate", config=config,
+                cwd=None if folder is None else str(folder))
     except PapermillExecutionError as error:
         raise _failed(notebook, f"cell {error.cell_index + 1} failed: {error.ename}: {error.evalue}",
                       "mend the cause and run the notebook again") from error
@@ -77,19 +80,22 @@ def run_notebook(notebook: Path | str, out: Path | str, parameters: Mapping[str,
         partly.unlink(missing_ok=True)
 
 
-def _kernel_config() -> Any:
-    """Let kernels speak over sockets in the user's own folder, where the system has them.
+@contextmanager
+def _own_sockets() -> Iterator[Any]:
+    """Configure a kernel that speaks over sockets in a folder of its own, where the system has them.
 
     Ports may be taken by another kernel between choosing and opening them, and are open to the machine's other
-    users. A socket's path has to fit into 107 bytes on Linux, of which the kernel's file name takes some 50.
+    users. Without a folder of its own, kernels started at one moment take each other's sockets.
     """
-    from jupyter_core.paths import jupyter_runtime_dir
     from traitlets.config import Config
 
     config = Config()
-    if sys.platform != "win32" and len(jupyter_runtime_dir().encode()) < 55:
-        config.KernelManager.transport = "ipc"
-    return config
+    with TemporaryDirectory(prefix="fd-", ignore_cleanup_errors=True) as folder:
+        # a socket's path has to fit into 107 bytes on Linux, fewer elsewhere
+        if sys.platform != "win32" and len(folder.encode()) < 80:
+            config.KernelManager.transport = "ipc"
+            config.KernelManager.ip = str(Path(folder) / "k")
+        yield config
 
 
 def _failed(notebook: Path, what: str, do: str) -> ReportError:

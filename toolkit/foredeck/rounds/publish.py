@@ -55,7 +55,10 @@ def publish(ledger: Ledger, record: RoundRecord, settings: Settings, progress: P
     place = settings.pack.folder / record.name
     staging = settings.pack.folder / f".{record.name}-{record.revision}"
     _repair_exchange(place)
-    if not again and _is_whole(place, record):
+    wanted = reports_wanted(record.series_names, settings)
+    links = {name: f"reports/{file}" for name, file in file_names(wanted, ".html").items()}
+    current = not again and _is_current(place, record)
+    if current and all((place / link).exists() for link in links.values()):
         return Published(place / COVER, {})
     if again:
         shutil.rmtree(staging, ignore_errors=True)
@@ -63,8 +66,9 @@ def publish(ledger: Ledger, record: RoundRecord, settings: Settings, progress: P
         if stale != staging:
             shutil.rmtree(stale)
     staging.mkdir(parents=True, exist_ok=True)
-    wanted = _reports_wanted(record, settings)
-    links = {name: f"reports/{file}" for name, file in file_names(wanted, ".html").items()}
+    if current:
+        # a report that failed last time is tried again; those that stand are kept
+        shutil.copytree(place / "reports", staging / "reports", dirs_exist_ok=True)
     failed = _make_reports(ledger, record, links, staging, settings, progress)
     for name in failed:
         del links[name]
@@ -74,8 +78,15 @@ def publish(ledger: Ledger, record: RoundRecord, settings: Settings, progress: P
     return Published(place / COVER, failed)
 
 
-def _reports_wanted(record: RoundRecord, settings: Settings) -> list[str]:
-    asked, known = settings.pack.reports, record.series_names
+def reports_wanted(known: list[str], settings: Settings) -> list[str]:
+    """Names of the series that get a report.
+
+    Raises
+    ------
+    SettingsError
+        if the settings name a series that is not among the known ones.
+    """
+    asked = settings.pack.reports
     if "html" not in settings.pack.formats or asked == "none":
         return []
     if asked == "all":
@@ -164,7 +175,8 @@ def _finish(ledger: Ledger, record: RoundRecord, links: dict[str, str], failed: 
     write_manifest(staging, view, revision=record.revision)
 
 
-def _is_whole(place: Path, record: RoundRecord) -> bool:
+def _is_current(place: Path, record: RoundRecord) -> bool:
+    """Whether the pack in place is of this revision and state, with every file as it was written."""
     try:
         manifest = json.loads((place / "manifest.json").read_text(encoding="utf-8"))
         return bool(manifest["revision"] == record.revision and manifest["state"] == record.state

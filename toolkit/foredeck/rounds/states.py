@@ -22,7 +22,7 @@ from foredeck.ledger.round_record import RoundRecord
 from foredeck.ledger.store import Ledger, open_ledger
 from foredeck.periods import period_name
 from foredeck.rounds.compute import Progress, compute_round, data_fingerprint, made_with
-from foredeck.rounds.publish import Published, publish
+from foredeck.rounds.publish import Published, publish, reports_wanted
 from foredeck.rounds.source import closing_of
 from foredeck.settings import Settings
 from foredeck.studies import versions
@@ -50,6 +50,7 @@ def run_round(settings: Settings, period: str, progress: Progress) -> Outcome:
     """
     history = read_source(settings)
     closing = closing_of(history, settings, period)
+    reports_wanted(history.names, settings)  # a wrong name is told before anything is computed
     ledger = open_ledger(settings.ledger.folder, create=True)
     with ledger.writing():
         record = _recorded(ledger, history, closing, settings, progress)
