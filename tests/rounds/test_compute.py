@@ -13,12 +13,13 @@ from small_round import SERIES, write_folder
 from foredeck.errors import SettingsError
 from foredeck.intake.files import read_source
 from foredeck.periods import FinancialYear
+from foredeck.portfolio.one_series import study
 from foredeck.portfolio.totals import windows
 from foredeck.rounds import compute as passes
 from foredeck.rounds.compute import Computed, compute_round, data_fingerprint
 from foredeck.rounds.source import closing_of
 from foredeck.settings import Settings, load_settings
-from foredeck.studies import TABLES, study
+from foredeck.studies import TABLES
 
 
 def quiet(*_: Any) -> None:

@@ -20,7 +20,7 @@ _HOMES = {
     "difference": "foredeck.checks.differencing",
     "smooth": "foredeck.smoothing.catalogue",
     "backtest": "foredeck.backtests.error_table",
-    "study": "foredeck.studies",
+    "study": "foredeck.portfolio.one_series",
     "open_ledger": "foredeck.ledger.store",
 }
 _ROOMS = ("charts",)

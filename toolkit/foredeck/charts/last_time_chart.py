@@ -9,16 +9,17 @@ import pandas as pd
 from foredeck.charts.figure import Figure, blocks, note, scatter
 from foredeck.charts.labels import label, level_label, range_label
 from foredeck.charts.scale import decimals_for, number, pushed_apart, value_axis
-from foredeck.charts.source import StudyLike, outer_and_inner
+from foredeck.charts.source import outer_and_inner
 from foredeck.charts.theme import colour, role
 from foredeck.charts.time_axis import TimeAxis
+from foredeck.studies import Study
 
 HEIGHT, TOP, FOOT = 320, 18, 40
 COUNT = 12
 _OUTSIDE = (label("above"), label("below"))
 
 
-def last_time(study: StudyLike, id: str = "last-time") -> Figure:
+def last_time(study: Study, id: str = "last-time") -> Figure:
     """Draw the last forecasts one period ahead of a study's procedure backtest: see `last_time_figure`."""
     return last_time_figure(study.reliability, closing=study.closing, frequency=study.frequency, unit=study.unit,
                             levels=study.levels, id=id)

@@ -10,14 +10,14 @@ import pandas as pd
 from foredeck.charts.figure import Figure, note, scatter
 from foredeck.charts.labels import label
 from foredeck.charts.scale import decimals_for, number, pushed_apart, value_axis
-from foredeck.charts.source import StudyLike
 from foredeck.charts.theme import role
 from foredeck.charts.time_axis import TimeAxis
+from foredeck.studies import Study
 
 HEIGHT, TOP, FOOT = 300, 14, 40
 
 
-def members(study: StudyLike, names: Mapping[str, str] | None = None, id: str = "members") -> Figure | None:
+def members(study: Study, names: Mapping[str, str] | None = None, id: str = "members") -> Figure | None:
     """Draw the members of a study's forecast: see `members_figure`."""
     return members_figure(study.members, study.adjusted, closing=study.closing, frequency=study.frequency,
                           unit=study.unit, names=names, id=id)

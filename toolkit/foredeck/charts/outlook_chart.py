@@ -11,16 +11,17 @@ import pandas as pd
 from foredeck.charts.figure import Figure, blocks, close_line, close_words, note, scatter
 from foredeck.charts.labels import label, level_label
 from foredeck.charts.scale import ValueAxis, decimals_for, number, pushed_apart, value_axis
-from foredeck.charts.source import StudyLike, outer_and_inner, previous_of
+from foredeck.charts.source import outer_and_inner, previous_of
 from foredeck.charts.theme import colour, role
 from foredeck.charts.time_axis import SHOWN, TimeAxis
+from foredeck.studies import Study
 
 HEIGHT, TOP, FOOT, RIGHT = 420, 26, 40, 108
 GAP, GAP_SHORT = 22, 17
 """Pixels between labels; the first chart of a page is printed at two thirds of its height."""
 
 
-def outlook(study: StudyLike, write: Callable[[float], str] | None = None, id: str = "outlook") -> Figure:
+def outlook(study: Study, write: Callable[[float], str] | None = None, id: str = "outlook") -> Figure:
     """Draw the outlook of a study: see `outlook_figure`."""
     return outlook_figure(study.actuals, study.adjusted, closing=study.closing, frequency=study.frequency,
                           unit=study.unit, levels=study.levels, previous=previous_of(study), write=write, id=id)

@@ -11,9 +11,10 @@ import pandas as pd
 
 from foredeck.charts.labels import label, level_label
 from foredeck.charts.scale import decimals_for, number
-from foredeck.charts.source import StudyLike, outer_and_inner
+from foredeck.charts.source import outer_and_inner
 from foredeck.charts.theme import token
 from foredeck.charts.time_axis import TimeAxis
+from foredeck.studies import Study
 
 Place = Callable[[float], float]
 _STILL = 'vector-effect="non-scaling-stroke"'
@@ -34,7 +35,7 @@ class Picture:
         return self.html()
 
 
-def small_picture(study: StudyLike, **options: int) -> Picture:
+def small_picture(study: Study, **options: int) -> Picture:
     """Draw the small picture of a study: see `small_picture_of`."""
     return small_picture_of(study.name, study.actuals, study.adjusted, closing=study.closing,
                             frequency=study.frequency, unit=study.unit, levels=study.levels, **options)

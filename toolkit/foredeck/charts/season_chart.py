@@ -10,14 +10,14 @@ import pandas as pd
 from foredeck.charts.figure import Figure, note, numbers, scatter
 from foredeck.charts.labels import MONTHS, label
 from foredeck.charts.scale import number, pushed_apart, value_axis
-from foredeck.charts.source import StudyLike
 from foredeck.charts.theme import colour, role
 from foredeck.periods import Frequency, parse_period, season_position
+from foredeck.studies import Study
 
 HEIGHT, TOP, FOOT, YEARS = 330, 10, 30, 4
 
 
-def season(study: StudyLike, id: str = "season") -> Figure | None:
+def season(study: Study, id: str = "season") -> Figure | None:
     """Draw the seasonal pattern of a study: see `season_figure`."""
     return season_figure(study.actuals, study.adjusted, frequency=study.frequency, id=id)
 

@@ -11,15 +11,16 @@ from html import escape
 from foredeck.charts.labels import label, level_label
 from foredeck.charts.pictures import Picture
 from foredeck.charts.scale import LETTER, ValueAxis, decimals_for, number, value_axis
-from foredeck.charts.source import StudyLike, outer_and_inner, previous_of
+from foredeck.charts.source import outer_and_inner, previous_of
 from foredeck.charts.theme import token
 from foredeck.charts.time_axis import TimeAxis
+from foredeck.studies import Study
 
 Place = Callable[[float], float]
 WIDTHS = {"wide": 1064, "mid": 660, "narrow": 358}
 
 
-def strip(study: StudyLike, write: Callable[[float], str] | None = None,
+def strip(study: Study, write: Callable[[float], str] | None = None,
           edge: Callable[[float], str] | None = None) -> Picture | None:
     """Draw the strip of a study's next period; None where it has no forecast or no range.
 

@@ -7,9 +7,9 @@ import pandas as pd
 from foredeck.charts.figure import Figure, note, scatter
 from foredeck.charts.labels import benchmark_label, label
 from foredeck.charts.scale import decimals_for, number, pushed_apart, two_figures, value_axis
-from foredeck.charts.source import StudyLike
 from foredeck.charts.theme import role
 from foredeck.periods import Frequency, parse_period, period_name
+from foredeck.studies import Study
 
 LEAST = 3
 """Fewest tried forecasts from which a miss is averaged."""
@@ -35,13 +35,13 @@ def misses_by_lead(reliability: pd.DataFrame, least: int = LEAST) -> pd.DataFram
     return done[done["n"] >= least].reset_index()
 
 
-def trust(study: StudyLike, id: str = "trust") -> Figure:
+def trust(study: Study, id: str = "trust") -> Figure:
     """Draw the misses of a study's procedure backtest: see `trust_figure`."""
     return trust_figure(misses_by_lead(study.reliability), frequency=study.frequency, unit=study.unit,
                         benchmark=_benchmark(study), id=id)
 
 
-def _benchmark(study: StudyLike) -> str:
+def _benchmark(study: Study) -> str:
     """Name the benchmark: in a series too young to have a year before, it is the last value known."""
     every = Frequency(study.frequency)
     known = set(study.actuals["period"])

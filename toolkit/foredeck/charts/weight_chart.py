@@ -12,14 +12,14 @@ from foredeck.charts.figure import Figure, note, numbers
 from foredeck.charts.labels import label
 from foredeck.charts.members_chart import shown
 from foredeck.charts.scale import number, value_axis
-from foredeck.charts.source import StudyLike
 from foredeck.charts.theme import colour
 from foredeck.charts.time_axis import TimeAxis
+from foredeck.studies import Study
 
 SHOWN = 18
 
 
-def weights(study: StudyLike, names: Mapping[str, str] | None = None, id: str = "weights") -> Figure | None:
+def weights(study: Study, names: Mapping[str, str] | None = None, id: str = "weights") -> Figure | None:
     """Draw the weights of past periods in the method that leads a study's forecast.
 
     None where no method with a smoothing constant has at least half of the weight: the

@@ -3,82 +3,18 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Any, Protocol
+from typing import Any
 
 import pandas as pd
 
 from foredeck.periods import Frequency, parse_period, period_name
+from foredeck.studies import Study
 from foredeck.wording.numbers import Rounding, decimals_of_values
 
 NAN = float("nan")
 TRIED = 12
 """How many forecasts one period ahead the count of hits looks back on."""
-
-
-class PreviousLike(Protocol):
-    """What the round before said of a series."""
-
-    @property
-    def round(self) -> str:
-        """Name of the round; empty outside one."""
-
-    @property
-    def adjusted(self) -> pd.DataFrame:
-        """Table `adjusted` of the series."""
-
-
-class StudyLike(Protocol):
-    """The parts of a study that sentences need; `foredeck.studies.Study` has them."""
-
-    @property
-    def name(self) -> str:
-        """Name of the series."""
-
-    @property
-    def round(self) -> str:
-        """Name of the round; empty outside one."""
-
-    @property
-    def closing(self) -> str:
-        """Last closed period."""
-
-    @property
-    def frequency(self) -> str:
-        """One of the words of `Frequency`."""
-
-    @property
-    def levels(self) -> tuple[int, ...]:
-        """Nominal levels of the ranges, in parts of 100."""
-
-    @property
-    def info(self) -> Mapping[str, Any]:
-        """Row of the table `series`."""
-
-    @property
-    def unit(self) -> str:
-        """What the series counts."""
-
-    @property
-    def actuals(self) -> pd.DataFrame:
-        """Table `actuals` of the series."""
-
-    @property
-    def adjusted(self) -> pd.DataFrame:
-        """Table `adjusted` of the series."""
-
-    @property
-    def reliability(self) -> pd.DataFrame:
-        """Table `reliability` of the series."""
-
-    @property
-    def comparisons(self) -> pd.DataFrame:
-        """Table `comparisons` of the series."""
-
-    @property
-    def previous(self) -> PreviousLike | None:
-        """What the round before said, or None."""
 
 
 @dataclass(frozen=True)
@@ -206,7 +142,7 @@ def one_ahead(reliability: pd.DataFrame, outer: int, count: int = TRIED) -> OneA
         miss=float(miss.mean()), benchmark_miss=float(other.mean()) if other.notna().all() else NAN)
 
 
-def facts_of(study: StudyLike) -> SeriesFacts:
+def facts_of(study: Study) -> SeriesFacts:
     """Compute every fact from a study.
 
     Returns
@@ -259,7 +195,7 @@ def _has_year_before(reliability: pd.DataFrame, actuals: pd.DataFrame, frequency
                for p in reliability["period"].unique())
 
 
-def _last_said(study: StudyLike, outer: int, inner: int | None) -> tuple[Said, bool]:
+def _last_said(study: Study, outer: int, inner: int | None) -> tuple[Said, bool]:
     """What was said of the closing period: by the last round, else by the procedure backtest."""
     if study.previous is not None:
         row = row_of(study.previous.adjusted, study.closing)
