@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 import numpy as np
@@ -47,7 +48,9 @@ def relative_to_year(actuals: pd.DataFrame, frequency: Frequency, years: int = Y
         part, periods = used[stop - length:stop], actuals["period"].iloc[stop - length:stop]
         mean = np.nanmean(part) if np.isfinite(part).any() else np.nan
         value = part / mean * 100 if mean > 0 else np.full(length, np.nan)
-        rows.append(pd.DataFrame({"position": positions(periods, frequency), "back": back, "value": value}))
+        season = pd.DataFrame({"position": positions(periods, frequency), "back": back, "value": value})
+        # a 53rd week shares the place of the 52nd: the two are averaged
+        rows.append(season.groupby("position", as_index=False).agg({"back": "first", "value": "mean"}))
     return pd.concat(rows, ignore_index=True) if rows else pd.DataFrame({"position": [], "back": [], "value": []})
 
 
@@ -69,7 +72,7 @@ def season_figure(actuals: pd.DataFrame, adjusted: pd.DataFrame, *, frequency: s
     every = Frequency(frequency)
     length = every.season_length
     past = relative_to_year(actuals, every)
-    if length == 1 or len(past) < 2 * length or past["value"].isna().any():
+    if length == 1 or past["back"].nunique() < 2 or past["value"].isna().any():
         return None
     ahead = adjusted.sort_values("lead").head(length)
     drawn = len(ahead) == length and ahead["baseline"].mean() > 0
@@ -125,7 +128,12 @@ def _table(past: pd.DataFrame, at: list[int], forecast: list[float], names: list
     table = past.pivot(index="position", columns="back", values="value")
     table = table[sorted(table.columns, reverse=True)]
     said = dict(zip(at, forecast, strict=True))
-    cells = [[names[int(p)], *[number(v) for v in row], *([number(said[int(p)])] if said else [])]
+
+    def told(value: float) -> str:
+        # 52 weeks that hold a 53rd leave one place of the year empty
+        return "–" if math.isnan(value) else number(value)
+
+    cells = [[names[int(p)], *map(told, row), *([told(said.get(int(p), math.nan))] if said else [])]
              for p, row in zip(table.index, table.to_numpy(), strict=True)]
     heads = [label("season latest") if b == 0 else label("season back", count=b) for b in map(int, table.columns)]
     return pd.DataFrame(cells, columns=["", *[h.capitalize() for h in heads],
