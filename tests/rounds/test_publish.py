@@ -49,6 +49,24 @@ def test_a_report_that_fails_is_listed_on_the_cover_and_made_by_the_next_run(
     assert verify(pack) == []
 
 
+def test_a_worker_that_dies_costs_no_report(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    settings = settings_in(tmp_path, '["north/peat", "river/twine"]')
+    monkeypatch.setattr(publish, "make_report", failing_reports.die_once)
+    outcome = run_round(settings, "", quiet)
+    assert (settings.pack.folder / "died").exists()
+    assert outcome.exit_code == 0
+    assert len(list((outcome.cover.parent / "reports").glob("*.html"))) == 2
+
+
+def test_workers_that_always_die_end_in_a_pack_that_says_so(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    settings = settings_in(tmp_path, '["north/peat", "river/twine"]')
+    monkeypatch.setattr(publish, "make_report", failing_reports.die_always)
+    outcome = run_round(settings, "", quiet)
+    assert outcome.exit_code == REPORT_FAILED
+    assert "The report of north/peat could not be made: the process that made it died" in outcome.lines
+    assert outcome.cover.read_text(encoding="utf-8").count("the process that made it died") == 2
+
+
 def test_a_pack_that_was_harmed_is_made_again(tmp_path: Path) -> None:
     settings = settings_in(tmp_path, '"none"')
     cover = run_round(settings, "", quiet).cover

@@ -10,6 +10,7 @@ from __future__ import annotations
 import json
 import shutil
 from concurrent.futures import ProcessPoolExecutor, as_completed
+from concurrent.futures.process import BrokenProcessPool
 from dataclasses import dataclass, replace
 from multiprocessing import get_context
 from pathlib import Path
@@ -102,25 +103,31 @@ def reports_wanted(known: list[str], settings: Settings) -> list[str]:
 def _make_reports(ledger: Ledger, record: RoundRecord, links: dict[str, str], staging: Path, settings: Settings,
                   progress: Progress) -> dict[str, str]:
     """Run the report notebook of each series; return the reasons of those that failed."""
-    missing = {name: staging / link for name, link in links.items() if not (staging / link).exists()}
     (staging / "reports").mkdir(exist_ok=True)
-    failed: dict[str, str] = {}
-    done = len(links) - len(missing)
+    told: dict[str, str] = {}
+
+    def missing() -> list[str]:
+        return [name for name, link in links.items() if name not in told and not (staging / link).exists()]
+
     if links:
-        progress("reports", done, len(links))
-    if not missing:
-        return failed
-    # spawned, not forked: a fork of a process with threads (arrow, numba) may hang
-    with ProcessPoolExecutor(min(settings.pack.workers, len(missing)), mp_context=get_context("spawn")) as pool:
-        tasks = {pool.submit(make_report, str(ledger.folder), record.name, name, path): name
-                 for name, path in missing.items()}
-        for task in as_completed(tasks):
-            reason = task.result()
-            if reason:
-                failed[tasks[task]] = reason
-            done += 1
-            progress("reports", done, len(links))
-    return {name: failed[name] for name in links if name in failed}
+        progress("reports", len(links) - len(missing()), len(links))
+    for _ in range(TRIES):
+        left = missing()
+        if not left:
+            break
+        # spawned, not forked: a fork of a process with threads (arrow, numba) may hang
+        with ProcessPoolExecutor(min(settings.pack.workers, len(left)), mp_context=get_context("spawn")) as pool:
+            tasks = {pool.submit(make_report, str(ledger.folder), record.name, name, staging / links[name]): name
+                     for name in left}
+            try:
+                for done, task in enumerate(as_completed(tasks), start=len(links) - len(left) + 1):
+                    if task.result():
+                        told[tasks[task]] = task.result()
+                    progress("reports", done, len(links))
+            except BrokenProcessPool:
+                # one dead worker takes the whole pool with it; what the others made is kept
+                continue
+    return {**told, **dict.fromkeys(missing(), "the process that made it died")}
 
 
 def make_report(ledger: str, round: str, series: str, path: Path) -> str:
