@@ -158,8 +158,8 @@ def test_reading_faults_are_handed_through_with_the_value_used_and_not_reported_
     ], columns=list(FAULT_COLUMNS))
     found = find(history(y, faults=faults), CLOSING)
     assert found[["period", "code", "kind", "raw_text", "evidence", "remedy"]].values.tolist() == [
-        ["2022-02", "not_a_number", "fault", "see note", "No number: 'see note'.", "Enter it."],
-        ["2024-03", "duplicate", "fault", "433 and 458", "Sent twice.", "Keep one."]]
+        ["2022-02", "not_a_number", "fault", "see note", "No number: 'see note' (line 12).", "Enter it."],
+        ["2024-03", "duplicate", "fault", "433 and 458", "Sent twice (line 40).", "Keep one."]]
     assert found["used"][0] == pytest.approx(sales()[at("2022-02")], rel=0.15)
     assert found["used"][1] == y[at("2024-03")]
     assert found["raw"].isna().all()

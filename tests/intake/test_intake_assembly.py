@@ -43,14 +43,14 @@ def test_rows_that_agree_count_once_and_are_named(read):
     assert history.faults.to_dict("records") == [{
         "series": "a", "period": "2024-01", "code": "duplicate", "raw": "5 and 5.0",
         "where": "a.csv line 2, column cases and line 4, column cases",
-        "evidence": "2 rows hold 5 and 5.0; they agree and count once",
-        "remedy": "take out the wrong rows, or set sum_rows if they add up"}]
+        "evidence": "2 rows hold 5 and 5.0; they agree and count once.",
+        "remedy": "Take out the wrong rows, or set sum_rows if they add up."}]
 
 
 def test_of_rows_that_differ_the_last_counts_and_all_are_named(read):
     history = read("a,2024-01,5", "a,2024-01,6", "a,2024-01,", "a,2024-01,4")
     np.testing.assert_array_equal(history["a"].values, [4])
-    assert list(history.faults["evidence"]) == ["3 rows hold 5 and 6 and 4; the last one is used"]
+    assert list(history.faults["evidence"]) == ["3 rows hold 5 and 6 and 4; the last one is used."]
 
 
 def test_a_blank_row_beside_a_value_is_no_duplicate(read):

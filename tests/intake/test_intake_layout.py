@@ -124,8 +124,8 @@ def test_a_fault_in_a_wide_table_names_row_and_period(read):
     faults = read("code,2024-01,2024-02", "a,1,2", "b,?,3", series="code", layout="wide").faults
     assert faults.to_dict("records") == [{
         "series": "b", "period": "2024-01", "code": "not_a_number", "raw": "?",
-        "where": "a.csv line 3, column 2024-01", "evidence": "'?' is not a number",
-        "remedy": "correct the cell; leave it blank if nothing is known"}]
+        "where": "a.csv line 3, column 2024-01", "evidence": "'?' is not a number.",
+        "remedy": "Correct the cell; leave it blank if nothing is known."}]
 
 
 def test_a_heading_with_digits_that_is_no_period_is_refused_not_dropped(refusal):

@@ -17,7 +17,7 @@ Flags = NDArray[np.bool_]
 NEAR_TIE = 0.02
 """Methods within so much of the best relative error are as good: the simplest of them is taken.
 
-On the M3 series two thirds of a winner's lead in a backtest are gone in the test (own measurement)."""
+A smaller lead tells more of luck than of the method."""
 
 
 def equal_weights(pool: Flags) -> Array:

@@ -117,7 +117,8 @@ def _reading_faults(place: _Place) -> list[dict[str, object]]:
         rows.append({"series": place.series.name, "period": str(fault["period"]), "code": str(fault["code"]),
                      "kind": "fault", "raw": raw,
                      "used": float(place.used[i]) if i < len(place.used) else np.nan,
-                     "evidence": str(fault["evidence"]), "remedy": str(fault["remedy"]),
+                     "evidence": f"{str(fault['evidence']).removesuffix('.')} ({fault['where']}).",
+                     "remedy": str(fault["remedy"]),
                      "raw_text": str(fault["raw"])})
     return rows
 

@@ -199,8 +199,8 @@ def _nothing_read(rows: Rows, kinds: NDArray[np.int8], decimal: str) -> IntakeEr
 def _not_a_number(rows: Rows, periods: Sequence[pd.Period], row: int) -> tuple[str, ...]:
     raw = text_of(rows.values[row])
     return (rows.names[rows.series[row]], period_name(periods[rows.dates[row]]), "not_a_number", raw,
-            rows.place(row), f"{raw!r} is not a number",
-            "correct the cell; leave it blank if nothing is known")
+            rows.place(row), f"{raw!r} is not a number.",
+            "Correct the cell; leave it blank if nothing is known.")
 
 
 def _duplicate(rows: Rows, periods: Sequence[pd.Period], grid: _Grid, cell: int,
@@ -212,6 +212,6 @@ def _duplicate(rows: Rows, periods: Sequence[pd.Period], grid: _Grid, cell: int,
     same = len({values[row] if kinds[row] == Kind.NUMBER else raw
                 for row, raw in zip(here, raws, strict=True)}) == 1
     evidence = f"{len(here)} rows hold {' and '.join(raws)}; " + (
-        "they agree and count once" if same else "the last one is used")
+        "they agree and count once." if same else "the last one is used.")
     return (rows.names[rows.series[here[0]]], period_name(periods[rows.dates[here[0]]]), "duplicate",
-            " and ".join(raws), where, evidence, "take out the wrong rows, or set sum_rows if they add up")
+            " and ".join(raws), where, evidence, "Take out the wrong rows, or set sum_rows if they add up.")

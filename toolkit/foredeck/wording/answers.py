@@ -110,7 +110,8 @@ def _last_year(facts: SeriesFacts) -> Answer:
     tail = "".join(" " + _comparison(facts, name, value) for name, value in facts.comparisons)
     if not is_known(facts.last_year):
         return Answer(question, say("year none"), "", "", say("year none text", past=past) + tail)
-    size, value = facts.figures.nice(facts.ahead.value - facts.last_year), plain(facts.last_year, facts.decimals)
+    # from the figure that is shown, so that headline and answer subtract alike
+    size, value = facts.figures.nice(facts.shown - facts.last_year), plain(facts.last_year, facts.decimals)
     side = "more" if size > 0 else "less" if size < 0 else "same"
     lead = "" if size == 0 else say("year lead", size=facts.figures.text(abs(size)), unit=facts.unit)
     text = say(f"year text {side}", past=past, value=value)
