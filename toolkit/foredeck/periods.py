@@ -155,6 +155,24 @@ def parse_period(text: str, frequency: Frequency) -> pd.Period:
     return make_period(frequency, *(int(part) for part in match.groups()))
 
 
+def frequency_of_text(text: str) -> Frequency:
+    """Return the frequency that the form of a period's text tells.
+
+    Raises
+    ------
+    PeriodError
+        if the text is no period.
+    """
+    for frequency in Frequency:
+        try:
+            parse_period(text, frequency)
+        except PeriodError:
+            continue
+        return frequency
+    raise PeriodError(f"{text!r} is no period", allowed=", ".join(each.example for each in Frequency),
+                      do="write the period in one of these forms", value=text)
+
+
 def season_position(period: pd.Period) -> int:
     """Return the 0-based place of a period in its year.
 

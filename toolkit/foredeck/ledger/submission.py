@@ -12,7 +12,7 @@ import numpy as np
 import pandas as pd
 
 from foredeck.errors import LedgerError, PeriodError
-from foredeck.periods import Frequency, parse_period
+from foredeck.periods import frequency_of_text, parse_period
 from foredeck.studies import TABLES
 
 _NEEDED_COLUMNS = {"actuals": ("series", "period", "raw"), "totals": ("scope", "member")}
@@ -55,14 +55,13 @@ def frequency_and_period(name: str) -> tuple[str, pd.Period]:
     LedgerError
         if the name is no period.
     """
-    for frequency in Frequency:
-        try:
-            return frequency.value, parse_period(name, frequency)
-        except PeriodError:
-            continue
-    raise LedgerError(f"{name!r} is no name of a round", where="the round's name",
-                      allowed="the last closed period: " + ", ".join(each.example for each in Frequency),
-                      do="name the round by its last closed period", round=name)
+    try:
+        frequency = frequency_of_text(name)
+    except PeriodError as fault:
+        raise LedgerError(f"{name!r} is no name of a round", where="the round's name",
+                          allowed=f"the last closed period: {fault.allowed}",
+                          do="name the round by its last closed period", round=name) from fault
+    return frequency.value, parse_period(name, frequency)
 
 
 def last_day(period: pd.Period) -> str:

@@ -26,7 +26,7 @@ from typing import Any
 import pandas as pd
 
 from foredeck.errors import AdjustmentError, PeriodError
-from foredeck.review.period_texts import frequency_of_text
+from foredeck.periods import frequency_of_text
 
 KINDS = ("value", "percent", "amount")
 """The kinds, in the order in which they are applied."""

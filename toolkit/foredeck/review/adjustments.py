@@ -27,8 +27,8 @@ import numpy as np
 import pandas as pd
 
 from foredeck.errors import AdjustmentError
+from foredeck.periods import frequency_of_text
 from foredeck.review.adjustment_file import KINDS, checked_rows, read_adjustments
-from foredeck.review.period_texts import frequency_of_text
 from foredeck.review.sentences import number
 
 __all__ = ["ADJUSTMENT_COLUMNS", "apply_adjustments", "read_adjustments"]

@@ -10,8 +10,8 @@ from pathlib import Path
 import pandas as pd
 
 from foredeck.errors import IntakeError, PeriodError
-from foredeck.periods import FinancialYear, parse_period, period_name
-from foredeck.review.period_texts import frequency_of_text, shifted_all
+from foredeck.periods import FinancialYear, frequency_of_text, parse_period, period_name
+from foredeck.review.period_texts import shifted_all
 
 _COLUMNS = ["name", "series", "period", "value"]
 

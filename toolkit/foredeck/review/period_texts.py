@@ -7,26 +7,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from foredeck.errors import PeriodError
-from foredeck.periods import Frequency, parse_period, period_name
-
-
-def frequency_of_text(text: str) -> Frequency:
-    """The frequency that the form of a period's text tells.
-
-    Raises
-    ------
-    PeriodError
-        if the text is no period.
-    """
-    for frequency in Frequency:
-        try:
-            parse_period(text, frequency)
-        except PeriodError:
-            continue
-        return frequency
-    raise PeriodError(f"{text!r} is no period", allowed=", ".join(each.example for each in Frequency),
-                      do="write the period in one of these forms", value=text)
+from foredeck.periods import frequency_of_text, parse_period, period_name
 
 
 def shifted(text: str, by: int) -> str:

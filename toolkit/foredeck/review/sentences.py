@@ -5,8 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
-from foredeck.periods import Frequency, parse_period
-from foredeck.review.period_texts import frequency_of_text
+from foredeck.periods import Frequency, frequency_of_text, parse_period
 
 _MONTHS = ("January", "February", "March", "April", "May", "June", "July", "August", "September", "October",
            "November", "December")
