@@ -5,12 +5,12 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from foredeck import periods
 from foredeck.errors import PeriodError
 from foredeck.periods import (
     FinancialYear,
     Frequency,
     frequency_of,
+    frequency_of_text,
     make_period,
     parse_period,
     period_name,
@@ -149,11 +149,11 @@ def test_a_financial_year_from_a_month_that_does_not_exist_is_refused():
 
 @pytest.mark.parametrize("frequency", list(Frequency))
 def test_the_form_of_a_period_tells_its_frequency(frequency):
-    assert periods.frequency_of_text(frequency.example) is frequency
+    assert frequency_of_text(frequency.example) is frequency
 
 
 def test_a_text_that_is_no_period_of_any_frequency_is_refused():
     with pytest.raises(PeriodError) as refused:
-        periods.frequency_of_text("2026-13")
+        frequency_of_text("2026-13")
     assert str(refused.value) == ("'2026-13' is no period\n  allowed: 2026, 2026-Q3, 2026-10, 2026-W05\n"
                                   "  next: write the period in one of these forms")
