@@ -105,7 +105,9 @@ def _notes(rows: pd.DataFrame, outside: pd.DataFrame, axis: Any, outer: int, dec
 
 
 def _free_side(rows: pd.DataFrame, at: int, band: tuple[float, float], outer: int) -> str:
-    """Say where a label at a height goes so that it does not lie on a neighbour's block."""
+    """Say where a label goes so that it lies neither on a neighbour's block nor on the labels at the end."""
+    if at == rows["at"].max():
+        return "right"
     beside = rows[rows["at"].isin([at - 1, at + 1])]
     met = beside[(beside[f"lower_{outer}"] <= band[1]) & (beside[f"upper_{outer}"] >= band[0])]["at"]
     if met.empty or len(met) == 2:
