@@ -20,7 +20,7 @@ from foredeck.intake.history import History, closing_period
 from foredeck.periods import period_name
 from foredeck.review.adjustments import apply_adjustments, read_adjustments
 from foredeck.review.comparisons import read_comparison
-from foredeck.settings import load_settings
+from foredeck.settings.file import load_settings
 
 EXAMPLE = Path(__file__).parents[1] / "example_data"
 TEXT_FILES = ("actuals.csv", "budget.csv", "adjustments.csv", "earlier_forecasts.csv", "planted_findings.csv")

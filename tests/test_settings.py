@@ -8,7 +8,8 @@ import pytest
 from foredeck.assets import example_folder
 from foredeck.errors import SettingsError
 from foredeck.periods import Frequency
-from foredeck.settings import Settings, load_settings
+from foredeck.settings.file import load_settings
+from foredeck.settings.model import Settings
 
 BASE = """\
 [source]
@@ -273,7 +274,7 @@ def test_a_byte_order_mark_and_windows_line_ends_do_no_harm(tmp_path):
 
 
 def test_reading_settings_imports_no_heavy_package():
-    code = ("import sys, foredeck.settings; heavy = {'pandas', 'numpy', 'numba', 'plotly', 'sqlalchemy'}; "
+    code = ("import sys, foredeck.settings.file; heavy = {'pandas', 'numpy', 'numba', 'plotly', 'sqlalchemy'}; "
             "print(sorted(heavy & set(sys.modules)))")
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "[]"

@@ -84,6 +84,16 @@ def test_a_misspelt_key_is_told_with_line_and_nearest_spelling(tmp_path: Path) -
     assert "'horizon'" in done.stderr
 
 
+def test_a_misspelt_method_is_told_before_anything_is_computed(tmp_path: Path) -> None:
+    path = write_folder(tmp_path)
+    path.write_text(path.read_text().replace("horizon = 6", 'horizon = 6\nmethods = ["damped_hold"]'))
+    done = foredeck("round", folder=tmp_path)
+    assert done.returncode == 2
+    assert "[forecast] methods names 'damped_hold', which is not a method" in done.stderr
+    assert "next: did you mean 'damped_holt'?" in done.stderr
+    assert not (tmp_path / "ledger").exists()
+
+
 def test_data_that_cannot_be_read_exit_with_their_code(tmp_path: Path) -> None:
     write_folder(tmp_path)
     (tmp_path / "actuals.csv").unlink()

@@ -12,7 +12,7 @@ from foredeck.assets import example_folder
 from foredeck.errors import IntakeError, PeriodError, SettingsError
 from foredeck.intake.files import read_source
 from foredeck.periods import period_names
-from foredeck.settings import load_settings
+from foredeck.settings.file import load_settings
 
 LONG = {"series": "series", "period": "month", "value": "cases"}
 

@@ -18,7 +18,8 @@ from foredeck.portfolio.totals import windows
 from foredeck.rounds import compute as passes
 from foredeck.rounds.compute import Computed, compute_round, data_fingerprint
 from foredeck.rounds.source import closing_of
-from foredeck.settings import Settings, load_settings
+from foredeck.settings.file import load_settings
+from foredeck.settings.model import Settings
 from foredeck.studies import TABLES
 
 

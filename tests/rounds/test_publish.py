@@ -13,7 +13,8 @@ from foredeck.errors import SettingsError
 from foredeck.pack.manifest import verify
 from foredeck.rounds import publish
 from foredeck.rounds.states import REPORT_FAILED, run_round
-from foredeck.settings import Settings, load_settings
+from foredeck.settings.file import load_settings
+from foredeck.settings.model import Settings
 
 
 def quiet(*_: Any) -> None:

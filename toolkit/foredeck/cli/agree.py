@@ -7,7 +7,7 @@ from pathlib import Path
 import typer
 
 from foredeck.ledger.store import open_ledger
-from foredeck.settings import load_settings
+from foredeck.settings.file import load_settings
 
 
 def agree_on(settings_path: Path, name: str, by: str) -> None:

@@ -12,7 +12,8 @@ from foredeck.intake.files import read_source
 from foredeck.intake.history import History
 from foredeck.periods import period_name
 from foredeck.rounds.source import closing_of
-from foredeck.settings import load_settings
+from foredeck.settings.file import load_settings
+from foredeck.smoothing.catalogue import METHODS
 
 NEEDS_A_PERSON = 4
 
@@ -25,7 +26,7 @@ def print_findings(settings_path: Path) -> int:
     int
         0 when there is no fault, 4 when there is one.
     """
-    settings = load_settings(settings_path)
+    settings = load_settings(settings_path, methods=METHODS)
     history = read_source(settings)
     closing = closing_of(history, settings)
     for line in history.understood.lines():

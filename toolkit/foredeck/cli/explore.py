@@ -10,7 +10,7 @@ from foredeck.assets import notebook_path
 from foredeck.intake.files import read_source
 from foredeck.pack.file_names import file_name
 from foredeck.reports.execute import run_notebook
-from foredeck.settings import load_settings
+from foredeck.settings.file import load_settings
 
 
 def make_notebook(settings_path: Path, series: str) -> None:

@@ -8,12 +8,13 @@ import typer
 
 from foredeck.cli.progress import progress
 from foredeck.rounds.states import Outcome, render_round, run_round
-from foredeck.settings import load_settings
+from foredeck.settings.file import load_settings
+from foredeck.smoothing.catalogue import METHODS
 
 
 def run(settings_path: Path, period: str) -> int:
     """Run a round; the last line printed is the path of the pack's cover."""
-    settings = load_settings(settings_path)
+    settings = load_settings(settings_path, methods=METHODS)
     with progress() as tell:
         outcome = run_round(settings, period, tell)
     return _told(outcome)
@@ -21,7 +22,7 @@ def run(settings_path: Path, period: str) -> int:
 
 def render_again(settings_path: Path, name: str) -> int:
     """Make a recorded round's pack again."""
-    settings = load_settings(settings_path)
+    settings = load_settings(settings_path, methods=METHODS)
     with progress() as tell:
         outcome = render_round(settings, name, tell)
     return _told(outcome)

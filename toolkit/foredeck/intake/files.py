@@ -14,7 +14,7 @@ from foredeck.intake.dates import DATE_CELLS, FORMATS, Dates, detect_frequency, 
 from foredeck.intake.history import History, Understood
 from foredeck.intake.layout import Rows, long_rows, wide_rows
 from foredeck.periods import Frequency, period_name
-from foredeck.settings import Settings
+from foredeck.settings.model import Settings
 
 
 def read(

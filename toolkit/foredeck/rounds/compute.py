@@ -22,7 +22,7 @@ from foredeck.portfolio.totals import totals_table
 from foredeck.review.adjustment_file import read_adjustments
 from foredeck.review.adjustments import apply_adjustments
 from foredeck.review.comparisons import read_comparison
-from foredeck.settings import Settings
+from foredeck.settings.model import Settings
 from foredeck.studies import TABLES, empty_table, unadjusted, versions
 
 Progress = Callable[[str, int, int], None]

@@ -29,7 +29,7 @@ from foredeck.reports.execute import run_notebook
 from foredeck.reports.export import export_html, put_plotly_beside
 from foredeck.review.watch import watch_list
 from foredeck.rounds.compute import Progress
-from foredeck.settings import Settings
+from foredeck.settings.model import Settings
 
 COVER = "cover.html"
 TRIES = 2

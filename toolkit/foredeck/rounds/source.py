@@ -7,7 +7,7 @@ import pandas as pd
 from foredeck.errors import SettingsError
 from foredeck.intake.history import History, closing_period
 from foredeck.periods import parse_period, period_name
-from foredeck.settings import Settings
+from foredeck.settings.model import Settings
 
 
 def closing_of(history: History, settings: Settings, period: str = "") -> pd.Period:

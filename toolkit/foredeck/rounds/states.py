@@ -24,7 +24,7 @@ from foredeck.periods import period_name
 from foredeck.rounds.compute import Progress, compute_round, data_fingerprint, made_with
 from foredeck.rounds.publish import Published, publish, reports_wanted
 from foredeck.rounds.source import closing_of
-from foredeck.settings import Settings
+from foredeck.settings.model import Settings
 from foredeck.studies import versions
 
 NEEDS_A_PERSON = 4

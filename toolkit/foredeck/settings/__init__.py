@@ -1,0 +1,1 @@
+"""The settings of a portfolio, strict, from one TOML file."""
