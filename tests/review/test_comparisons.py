@@ -1,15 +1,14 @@
-"""Budgets from files, last year, the year to date, and what changed since last round."""
+"""Budgets from files, and what changed since last round."""
 
 from __future__ import annotations
 
-import numpy as np
 import pandas as pd
 import pytest
 
 from foredeck.errors import IntakeError
 from foredeck.review.changes import changes
-from foredeck.review.comparisons import last_year, read_comparison, year_to_date
-from review.small_round import file, forecasts
+from foredeck.review.comparisons import read_comparison
+from review.small_round import file
 
 
 def test_a_budget_by_series_is_read(tmp_path):
@@ -60,41 +59,6 @@ def test_a_missing_file_is_said(tmp_path):
     assert str(caught.value) == (
         f"there is no file none.csv\n  where: {tmp_path / 'none.csv'}\n  allowed: a CSV file\n"
         "  next: correct the path, or leave the setting out")
-
-
-def _actuals(*rows):
-    return pd.DataFrame(rows, columns=["series", "period", "raw"])
-
-
-def test_last_year_is_the_raw_actual_twelve_months_before():
-    actuals = _actuals(("north/pots", "2025-11", 90.0), ("north/pots", "2025-12", np.nan),
-                       ("north/pots", "2026-01", 80.0), ("north/pots", "2026-10", 1.0), ("x", "2025-11", 5.0))
-    assert last_year(actuals, forecasts()).to_dict("records") == [
-        {"name": "last year", "series": "north/pots", "period": "2026-11", "value": 90.0},
-        {"name": "last year", "series": "north/pots", "period": "2027-01", "value": 80.0}]
-    assert last_year(actuals, forecasts().iloc[:0]).empty
-
-
-@pytest.mark.parametrize(("now", "before"),
-                         [("2026-Q4", "2025-Q4"), ("2026-W05", "2025-W05"), ("2027", "2026"),
-                                             ("2021-W01", "2020-W02")])
-def test_a_year_before_is_one_season_before(now, before):
-    # 2020 had 53 ISO weeks: 52 weeks before the first of 2021 lies the second of 2020.
-    found = last_year(_actuals(("a", before, 7.0)), pd.DataFrame({"series": ["a"], "period": [now]}))
-    assert list(found["value"]) == [7.0]
-
-
-def test_the_year_to_date_counts_from_the_first_month_of_the_financial_year():
-    rows = [("a", f"2026-{month:02}", float(month)) for month in range(1, 11)]
-    rows += [("b", "2026-03", 100.0), ("b", "2026-04", 5.0), ("b", "2026-05", np.nan)]
-    found = year_to_date(_actuals(*rows), "2026-10", first_month=4)
-    assert found.to_dict("records") == [
-        {"series": "a", "first": "2026-04", "last": "2026-10",
-         "actual_to_date": float(4 + 5 + 6 + 7 + 8 + 9 + 10),
-         "n_periods": 7, "n_missing": 0},
-        {"series": "b", "first": "2026-04", "last": "2026-10", "actual_to_date": 5.0, "n_periods": 7,
-         "n_missing": 6}]
-    assert year_to_date(_actuals(*rows), "2026-10")["actual_to_date"].tolist() == [55.0, 105.0]
 
 
 def _adjusted(*rows):

@@ -1,4 +1,4 @@
-"""Figures to hold a forecast against: a budget or target from a file, last year, the year to date."""
+"""Figures to hold a forecast against: a budget or target from a file."""
 
 from __future__ import annotations
 
@@ -10,8 +10,7 @@ from pathlib import Path
 import pandas as pd
 
 from foredeck.errors import IntakeError, PeriodError
-from foredeck.periods import FinancialYear, frequency_of_text, parse_period, period_name
-from foredeck.review.period_texts import shifted_all
+from foredeck.periods import frequency_of_text
 
 _COLUMNS = ["name", "series", "period", "value"]
 
@@ -103,56 +102,3 @@ def _number(text: str, where: str) -> float:
                           allowed="a plain number such as 1250 or 17.5",
                           do="correct the value, or remove the row")
     return figure
-
-
-def last_year(actuals: pd.DataFrame, forecasts: pd.DataFrame) -> pd.DataFrame:
-    """The actual of the same period a year before each forecast period.
-
-    Parameters
-    ----------
-    actuals : DataFrame[series, period, raw]
-    forecasts : DataFrame[series, period, ...]
-
-    Returns
-    -------
-    DataFrame[name, series, period, value]
-        name is "last year"; raw values; one row for each forecast period that has such an
-        actual. A year is one season: 52 periods of weekly series.
-    """
-    cells = forecasts[["series", "period"]].drop_duplicates()
-    if cells.empty:
-        return pd.DataFrame(columns=_COLUMNS).astype({**dict.fromkeys(_COLUMNS, "str"), "value": "float64"})
-    season = frequency_of_text(str(cells["period"].iloc[0])).season_length
-    before = cells.assign(year_before=cells["period"].map(shifted_all(cells["period"], -season)))
-    known = actuals[["series", "period", "raw"]].rename(columns={"period": "year_before", "raw": "value"})
-    found = before.merge(known, on=["series", "year_before"], how="inner").dropna(subset="value")
-    return found.assign(name="last year")[_COLUMNS].reset_index(drop=True)
-
-
-def year_to_date(actuals: pd.DataFrame, closing: str, first_month: int = 1) -> pd.DataFrame:
-    """Actuals of the financial year so far.
-
-    Parameters
-    ----------
-    actuals : DataFrame[series, period, raw]
-    closing : str
-        The last closed period.
-    first_month : int
-        With which month the financial year begins.
-
-    Returns
-    -------
-    DataFrame[series, first, last, actual_to_date, n_periods, n_missing]
-        The sum of raw values from the year's first period to the closing; `n_missing`
-        counts periods without a value, which add nothing.
-    """
-    period = parse_period(closing, frequency_of_text(closing))
-    first = FinancialYear(first_month).containing(period)[0]
-    spanned = [period_name(first + step) for step in range((period - first).n + 1)]
-    inside = actuals[actuals["period"].isin(spanned)]
-    sums = inside.groupby("series", sort=False)["raw"].agg(["sum", "count"])
-    names = pd.Series(actuals["series"].unique(), dtype="str")
-    return pd.DataFrame({
-        "series": names, "first": spanned[0], "last": closing,
-        "actual_to_date": names.map(sums["sum"]).fillna(0.0).astype("float64"), "n_periods": len(spanned),
-        "n_missing": len(spanned) - names.map(sums["count"]).fillna(0).astype("int64")})

@@ -5,16 +5,9 @@ Within one frequency the texts sort as the periods do.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
-
 from foredeck.periods import frequency_of_text, parse_period, period_name
 
 
 def shifted(text: str, by: int) -> str:
     """The period so many periods later (earlier when negative)."""
     return period_name(parse_period(text, frequency_of_text(text)) + by)
-
-
-def shifted_all(texts: Iterable[str], by: int) -> dict[str, str]:
-    """Each distinct period with the one so many periods later."""
-    return {text: shifted(text, by) for text in dict.fromkeys(texts)}
