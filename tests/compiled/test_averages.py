@@ -123,6 +123,13 @@ def test_the_optimised_alpha_is_no_worse_than_any_of_a_thousand(walk):
     assert sse(found) <= min(sse(alpha) for alpha in np.linspace(0.02, 0.99, 971)) * (1 + 1e-6)
 
 
+def test_where_every_alpha_is_as_good_the_smallest_is_taken():
+    pair, constant = np.array([5.0, 8.0]), np.full(9, 7.3)
+    for values in (pair, constant):
+        assert averages.theta(values, ALPHAS, np.empty(values.size))[0] == 0.02
+        assert averages.dynamic_theta_alpha(values, ALPHAS) == 0.02
+
+
 def test_averaged_damped_trend_equals_its_plain_twin_to_1e_9(walk):
     one_step, trends = np.empty(37), np.empty(2)
     level, *means = averages.averaged_damped(walk, ALPHAS, BETAS, PHIS, one_step, trends)

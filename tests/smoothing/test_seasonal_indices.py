@@ -54,6 +54,14 @@ def test_shrunken_indices_are_nearer_to_a_weak_season_than_classical_ones(m):
     assert shrunken < 0.8 * classical
 
 
+def test_a_single_strong_week_of_three_years_keeps_nine_tenths_of_its_height_and_its_neighbours_stay_flat():
+    season = np.zeros(52)
+    season[50] = 60.0
+    indices, _ = seasonal_indices(np.resize(season, 157) + np.random.default_rng(2).normal(0, 2, 157), 52)
+    assert indices[50] - np.delete(indices, 50).mean() > 54
+    assert np.abs(np.delete(indices, 50) - np.delete(indices, 50).mean()).max() < 5
+
+
 def test_factors_for_values_above_zero_and_amounts_otherwise(trended):
     assert seasonal_indices(trended, 12)[1]
     indices, multiplicative = seasonal_indices(trended - trended.min(), 12)

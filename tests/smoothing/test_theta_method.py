@@ -24,7 +24,7 @@ def walk():
 
 @pytest.mark.parametrize("alpha", [0.1, 0.5, 0.9])
 def test_theta_is_simple_smoothing_with_a_drift_of_half_the_slope_hyndman_billah_2003(walk, alpha):
-    # Hyndman & Billah (2003), equation 6: l_n + b/2 (h - 1 + 1/alpha - (1-alpha)^n / alpha), to 1e-10
+    # International Journal of Forecasting 19, 287-290: l_n + b/2 (h - 1 + 1/alpha - (1-alpha)^n / alpha), to 1e-10
     n, lead = walk.size, np.arange(1, 9)
     slope = np.polyfit(np.arange(n), walk, 1)[0]
     level = smooth(walk, "ses", alpha=alpha, initial="first value").final["level"]
@@ -73,14 +73,13 @@ def test_a_held_alpha_makes_the_average_the_same_as_the_optimised_method(walk):
 
 
 @pytest.mark.parametrize("fit", METHODS)
-def test_one_step_forecasts_of_the_last_period_are_forecasts_from_the_period_before_at_the_same_start(fit):
-    # A forecast from fewer values has another regression, so the season and the line must not move: a level.
+def test_a_perfect_season_on_a_level_is_repeated_and_was_forecast_from_the_second_or_third_period_on(fit):
     values = np.tile([10.0, 12.0, 11.0, 9.0], 6)
-    fitted = fit(values, 4, {"alpha": 0.5})
-    known = fitted.residuals[np.isfinite(fitted.residuals)]
-    assert known.size == values.size - (1 if fit is fit_theta else 2)
-    np.testing.assert_allclose(fitted.fitted[2:], values[2:], rtol=1e-9)
-    np.testing.assert_allclose(fitted.forecast(4), values[:4], rtol=1e-9)
+    fitted = fit(values, 4)
+    first = 1 if fit is fit_theta else 2
+    assert np.isnan(fitted.fitted[:first]).all()
+    np.testing.assert_allclose(fitted.fitted[first:], values[first:], rtol=1e-9)
+    np.testing.assert_allclose(fitted.forecast(6), np.resize(values[:4], 6), rtol=1e-9)
 
 
 @pytest.mark.parametrize("fit", METHODS)

@@ -35,21 +35,18 @@ _TIE = 1e-10  # losses that differ by less than this part are equal: rounding mu
 
 
 @compiled
-def units(values: Array) -> tuple[float, float]:
-    """Return centre and scale of values: their mean, and their mean absolute distance from it (1 if it is 0)."""
-    centre = 0.0
+def scaled(values: Array) -> tuple[Array, float, float]:
+    """Return values of order one, and the centre and the scale they had.
+
+    The centre is the mean, the scale the mean absolute distance from it, or 1 if that is 0.
+    Neither sum nor squares are formed, which may leave the number range.
+    """
+    centre, distance = 0.0, 0.0
     for t in range(values.size):
-        centre += values[t] / values.size  # not the sum, which may leave the number range
-    distance = 0.0
+        centre += values[t] / values.size
     for t in range(values.size):
         distance += abs(values[t] - centre) / values.size
-    return centre, distance if distance > 0.0 else 1.0
-
-
-@compiled
-def scaled(values: Array) -> tuple[Array, float, float]:
-    """Return the values less their centre, over their scale, and both (`units`)."""
-    centre, scale = units(values)
+    scale = distance if distance > 0.0 else 1.0
     return (values - centre) / scale, centre, scale
 
 
@@ -84,17 +81,15 @@ def seasonal_indices(values: Array, m: int, multiplicative: bool, indices: Array
     References
     ----------
     James & Stein (1961), Proceedings of the Fourth Berkeley Symposium 1, 361-379.
-    Miller & Williams (2003), section 2.
+    Miller & Williams (2003).
     """
     neutral = 1.0 if multiplicative else 0.0
     indices[:] = neutral
     if m < 2 or values.size < 2 * m + 1:
         return
-    scale = 1.0
-    if not multiplicative:
-        scale = units(values)[1]
+    y, _, scale = scaled(values)
     relative = np.empty(values.size)
-    distances(values / scale, m, multiplicative, relative)
+    distances(values if multiplicative else y, m, multiplicative, relative)
     first, last = m // 2, values.size - m // 2
     sums, counts = np.zeros(m), np.zeros(m)
     for t in range(first, last):
@@ -182,7 +177,7 @@ def theta(values: Array, alphas: Array, one_step: Array) -> tuple[float, float, 
 def running_lines(y: Array, means: Array, slopes: Array) -> None:
     """Fill entry `t` with mean and slope of the least-squares line through the first `t` values.
 
-    The slope is updated as in Fiorucci et al. (2016), equation 17; it is 0 for one value.
+    The slope is updated as in Fiorucci et al. (2016); it is 0 for one value.
     The line's intercept is `mean - slope (t + 1) / 2`.
     """
     means[0], slopes[0] = 0.0, 0.0

@@ -4,9 +4,12 @@ The indices are classical ones shrunken towards none instead of a test whether t
 season: what may be noise is taken away by degrees, and one value more never switches the
 season on or off. They are factors where all values are above zero and amounts otherwise.
 
-Weeks: with 52 indices each rests on as many values as there are years, but the noise is
-judged by all of them together and the share taken away is nearly the whole noise
-(`(m - 3) / (m - 1)` is .96), so the same rule serves.
+Weeks follow the same rule as months and quarters. Each of 52 indices rests on as few
+values as there are years, but all of them together tell how much is noise, and the share
+taken away then comes to nearly all of it. Averaging neighbouring weeks as well would make
+a smooth season smoother, and would flatten the single weeks before holidays, which is what
+weekly indices are needed for. Only in the first weeks after the second full season, when
+hardly any week has been seen twice, is the noise itself judged poorly.
 """
 
 from __future__ import annotations
@@ -63,7 +66,7 @@ FitOne = Callable[..., Learned]
 
 
 def seasonal_indices(values: Array, season_length: int) -> tuple[Array, bool]:
-    """Classical seasonal indices, shrunken towards none.
+    """Classical seasonal indices, shrunken towards none by the rule of James and Stein.
 
     Ratios to a centred moving average over a full season where all values are above zero,
     differences from it otherwise; no test of significance. The share of an index that is

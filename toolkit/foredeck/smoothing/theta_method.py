@@ -33,7 +33,8 @@ def fit_theta(values: Array, season_length: int, constants: Mapping[str, float] 
     """Theta method: half a straight line through all values, half simple smoothing of the line theta = 2.
 
     The smoothing starts from the first value; alpha is the hundredth from .01 to .99 of
-    the least mean absolute one-step error, which is also that of the method.
+    the least mean absolute one-step error. The published method takes a season out only
+    where a test finds one; here the indices are shrunken instead.
 
     Parameters
     ----------
@@ -52,7 +53,7 @@ def fit_theta(values: Array, season_length: int, constants: Mapping[str, float] 
 
     References
     ----------
-    Assimakopoulos & Nikolopoulos (2000), section 3.
+    Assimakopoulos & Nikolopoulos (2000).
     """
     return fit_adjusted(learn_theta, values, season_length, constants, method="theta", title="Theta")
 
@@ -75,7 +76,7 @@ def fit_optimised_theta(
 
     References
     ----------
-    Fiorucci et al. (2016), section 2.2 (the dynamic optimised theta model).
+    Fiorucci et al. (2016), the dynamic optimised theta model.
     """
     return fit_adjusted(
         learn_optimised_theta, values, season_length, constants, method="optimised_theta", title="Optimised theta"
@@ -103,7 +104,7 @@ def fit_dynamic_theta(
 
     References
     ----------
-    Fiorucci et al. (2016), section 2.2. Hoeting, Madigan, Raftery & Volinsky (1999),
+    Fiorucci et al. (2016). Hoeting, Madigan, Raftery & Volinsky (1999),
     Statistical Science 14, 382-417, for averages weighted by likelihood.
     """
     return fit_adjusted(
