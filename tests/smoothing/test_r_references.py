@@ -198,13 +198,23 @@ def test_holt_at_the_steady_gains_ends_at_level_and_trend_that_r_struct_ts_filte
     np.testing.assert_allclose(ours.forecast(12), entry["forecast"], rtol=10 * tolerance)
 
 
-@pytest.mark.parametrize(("name", "m"), [("season_log_gas", 4), ("season_log_airline", 12)])
-def test_additive_holt_winters_goes_near_the_basic_structural_model_of_r(name, m):
+def test_additive_holt_winters_goes_near_the_basic_structural_model_of_r_on_the_airline_series():
     """Harvey (1989), section 2.3.4.
 
-    No equivalence: the structural season sums to zero at all times and has a variance of its own,
-    so this is a second opinion. Twelve leads of log10, root mean square of the gap within .04 (10 %).
+    No equivalence, since the structural season has a variance of its own: a second opinion.
+    A year of log10, root mean square of the gap within .03 (7 %).
     """
-    entry = STRUCTURAL[name]
-    gap = smooth(series(entry), "holt_winters_additive", m).forecast(12) - entry["forecast"]
-    assert np.sqrt(np.mean(gap**2)) < 0.04
+    entry = STRUCTURAL["season_log_airline"]
+    gap = smooth(series(entry), "holt_winters_additive", 12).forecast(12) - entry["forecast"]
+    assert np.sqrt(np.mean(gap**2)) < 0.03
+
+
+def test_season_of_uk_gas_is_that_of_the_basic_structural_model_of_r_within_5_percent():
+    # The trend of this series hangs on a flat optimum, its season does not: log10, tolerance .02, span .57.
+    entry = STRUCTURAL["season_log_gas"]
+    ours = smooth(series(entry), "holt_winters_additive", 4).forecast(12)
+    seasons = []
+    for forecast in (ours, np.array(entry["forecast"])):
+        level = forecast[:4] - np.arange(4) * (forecast[4] - forecast[0]) / 4
+        seasons.append(level - level.mean())
+    np.testing.assert_allclose(seasons[0], seasons[1], rtol=0, atol=0.02)
