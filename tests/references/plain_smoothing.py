@@ -37,6 +37,15 @@ def smoothing(y, *, alpha, beta=0.0, gamma=0.0, phi=1.0, level, trend=0.0, seaso
     return np.array(forecasts), level, trend, s
 
 
+def deviance(y, forecasts, relative):
+    """Minus twice the log likelihood without constants: Hyndman et al. (2008), equation 5.1 and section 5.1."""
+    known = ~np.isnan(forecasts)
+    y, mean = np.asarray(y)[known], forecasts[known]
+    if relative:
+        return y.size * np.log(np.sum(((y - mean) / mean) ** 2)) + 2 * np.sum(np.log(mean))
+    return y.size * np.log(np.sum((y - mean) ** 2))
+
+
 def ahead(n, horizon, *, phi=1.0, level, trend=0.0, season=None, kind="none"):
     """Forecasts from last states after n periods."""
     path = []

@@ -1,265 +1,612 @@
-"""Starting states and constants by least squares of one-step errors.
+"""Constants and starting states by maximum likelihood, for one form or for many at once.
 
-In additive forms the starting states enter every one-step forecast linearly: at given
-constants the best ones follow from one small linear system (`profile`), and only the
-constants are searched. In multiplicative forms the states are searched with the
-constants. The search is a damped Gauss-Newton descent inside bounds (Levenberg 1944,
-Marquardt 1963), begun cold from the best point of each block of a coarse grid; the best end is polished.
-Everything is deterministic.
-
-The caller hands in data of order one: `y` centred and scaled, or scaled alone.
+The criterion is the deviance `n log(SSE) + 2 sum(log forecast)` of Hyndman, Koehler, Ord &
+Snyder (2008), section 5.1, with relative errors and the second part when the error is
+multiplicative; when it is additive this is least squares. The descent is that of Broyden,
+Fletcher, Goldfarb and Shanno (Nocedal & Wright 2006, section 6.1), begun cold from the
+best points of a coarse grid. A constant between its bounds is searched as an angle,
+`low + (high - low) (1 - cos angle) / 2`, which reaches the bounds themselves: the best
+constants of short series mostly lie there. In additive forms the starting states enter
+every one-step forecast linearly, so at given constants the best ones are solved for
+(`profile`); in multiplicative forms they are searched, in units of a typical error.
+Everything is deterministic, to the last bit also with the compiler switched off.
 """
 
 from __future__ import annotations
+
+import math
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from foredeck.compiled.compiler import compiled
-from foredeck.compiled.recursions import NO_SEASON, run
+from foredeck.compiled.recursions import (
+    ADDITIVE,
+    MULTIPLICATIVE,
+    NO_SEASON,
+    classical_start,
+    normal_equations,
+    project,
+    remaining,
+    respond,
+    run,
+    run_back,
+)
 
 Array = NDArray[np.float64]
-Flags = NDArray[np.bool_]
+
+LOWEST, HIGHEST = (1e-4, 1e-4, 1e-4, 0.8), (0.9999, 0.9999, 0.9999, 0.98)
+"""Bounds of estimated constants; a gamma against the expected level is a share of what alpha leaves to 1."""
 
 PROFILE, SEARCH, HOLD = 0, 1, 2
 """What becomes of the starting states: solved for, searched with the constants, or held."""
 
-_PIVOT = 1e-9  # columns closer to the others than this share are left out: their states are not identified
-_STEP = 1e-6  # of the numerical derivatives, on constants and scaled states of order one
-_CLOSE, _DONE = 1e-4, 1e-11  # relative gains in the sum of squares that end a first and the last descent
-_ROUNDS = 60
-_TINY = 1e-24  # a mean squared error of scaled data under this is a perfect fit
+_PERFECT = 1e-18  # a mean squared error of scaled data under this is a perfect fit
+_PIVOT = 1e-9  # states that the others tell up to this share are not identified: they stay at 0
+_STEPS = 200
+_ALPHAS = (0.56, 1.09, 1.77, 2.44)  # angles of the cold starts: alpha about .08, .27, .60, .88
+_LOWS, _PHI = (0.44, 1.09), 2.05  # of beta and gamma: about .05 and .27; of phi: about .93
+
+
+class Task(NamedTuple):
+    """What is to be fitted: data of order one, a form, what is held, and where to begin."""
+
+    y: Array
+    first: int
+    error: int
+    trend: bool
+    season: int
+    m: int
+    new_level: bool
+    held: Array
+    start: Array
+    states: int
+    unit: Array
+
+
+class Room(NamedTuple):
+    """Arrays that one run, its way back, and the system for the starting states fill."""
+
+    constants: Array
+    state: Array
+    errors: Array
+    trace: Array
+    gradient: Array
+    unit: Array
+    slope: Array
+    gram: Array
+    right: Array
+    indices: Array
+
+
+@compiled
+def room_for(n: int, m: int, constants: Array, errors: Array) -> Room:
+    """Arrays for `n` values and a season of `m` periods, around two that the caller reads afterwards."""
+    return Room(
+        constants, np.empty(m + 2), errors, np.empty((3, n)), np.empty(m + 6), np.empty(n), np.empty(n),
+        np.empty((m + 1, m + 1)), np.empty(m + 1), np.empty((3, m)),
+    )
 
 
 @compiled
 def solve(matrix: Array, right: Array) -> None:
     """Solve a symmetric positive system in place; unknowns that are not identified become 0.
 
-    `matrix` is read and overwritten in its lower triangle; the solution stands in `right`.
+    `matrix` is read and overwritten from its diagonal on; the solution stands in `right`.
     """
     size = right.size
+    for i in range(1, size):
+        matrix[i, 0] = matrix[i, i]  # the diagonal as given, kept where nothing is read
     for j in range(size):
         pivot = matrix[j, j]
-        for k in range(j):
-            pivot -= matrix[j, k] * matrix[j, k]
-        dropped = pivot <= _PIVOT * matrix[j, j]
-        root = 0.0 if dropped else np.sqrt(pivot)
-        matrix[j, j] = root
+        if pivot <= _PIVOT * (matrix[j, 0] if j > 0 else pivot) or pivot <= 0.0:
+            matrix[j, j] = 0.0
+            continue
         for i in range(j + 1, size):
-            entry = matrix[i, j]
-            for k in range(j):
-                entry -= matrix[i, k] * matrix[j, k]
-            matrix[i, j] = 0.0 if dropped else entry / root
-    for j in range(size):
-        for k in range(j):
-            right[j] -= matrix[j, k] * right[k]
-        right[j] = 0.0 if matrix[j, j] == 0.0 else right[j] / matrix[j, j]
+            share = matrix[j, i] / pivot
+            right[i] -= share * right[j]
+            for k in range(i, size):
+                matrix[i, k] -= share * matrix[j, k]
     for j in range(size - 1, -1, -1):
+        if matrix[j, j] == 0.0:
+            right[j] = 0.0
+            continue
         for i in range(j + 1, size):
-            right[j] -= matrix[i, j] * right[i]
-        right[j] = 0.0 if matrix[j, j] == 0.0 else right[j] / matrix[j, j]
+            right[j] -= matrix[j, i] * right[i]
+        right[j] /= matrix[j, j]
 
 
 @compiled
-def profile(
-    y: Array, season: int, m: int, trend: bool, new_level: bool, constants: Array, state: Array, errors: Array
-) -> float:
-    """Fill `state` with the least-squares starting states of an additive form, `errors` with its errors.
+def profile(task: Task, room: Room) -> float:
+    """Fill the state with the best starting states of an additive form, the errors with those that remain.
 
-    A unit of starting index `j` acts like a unit of index 0, `j` periods later, so one
-    response serves all indices. Level and indices are known only up to a constant: the
-    level is left out of the system and taken as the mean of the indices afterwards.
+    One-step errors are linear in the starting states, so these follow from least
+    squares. Level and indices are known only up to a constant: the level is left out of
+    the system and taken as the mean of the indices.
     """
-    n = y.size
-    size = m + 1 if trend else m
-    nothing, unit, slope = np.zeros(n), np.zeros(n), np.zeros(n)
-    state[:] = 0.0
-    state[2 if season != NO_SEASON else 0] = 1.0
-    run(nothing, 0, season, m, new_level, constants, state, unit)
-    if trend:
-        state[:] = 0.0
-        state[1] = 1.0
-        run(nothing, 0, season, m, new_level, constants, state, slope)
-    state[:] = 0.0
-    run(y, 0, season, m, new_level, constants, state, errors)
-
-    # Errors fall by the response: the responses above are minus the one-step forecasts.
-    gram, right = np.zeros((size, size)), np.zeros(size)
-    for lag in range(m):
-        product = 0.0
-        for t in range(n - lag):
-            product += unit[t] * unit[t + lag]
-            later = n - 1 - t
-            if later < m:
-                gram[later, later - lag] = product
-        for t in range(lag, n):
-            right[lag] -= unit[t - lag] * errors[t]
-            if trend:
-                gram[m, lag] += unit[t - lag] * slope[t]
-    if trend:
-        for t in range(n):
-            gram[m, m] += slope[t] * slope[t]
-            right[m] -= slope[t] * errors[t]
-    solve(gram, right)
-
-    total = 0.0
-    for lag in range(m):
-        for t in range(lag, n):
-            errors[t] += right[lag] * unit[t - lag]
-    for t in range(n):
-        if trend:
-            errors[t] += right[m] * slope[t]
-        total += errors[t] * errors[t]
-    state[0] = np.mean(right[:m])
-    state[1] = right[m] if trend else 0.0
-    state[2:] = right[:m] - state[0]
+    m = task.m
+    respond(
+        task.y, task.season, m, task.new_level, room.constants, room.indices, room.errors, room.unit, room.slope
+    )
+    size = m + task.trend
+    gram, found = room.gram[:size, :size], room.right[:size]
+    normal_equations(room.unit, room.slope, room.errors, task.trend, gram, found)
+    solve(gram, found)
+    total = remaining(room.unit, room.slope, room.errors, task.trend, found)
+    level = 0.0
+    for j in range(m):
+        level += found[j] / m
+    room.state[0] = level
+    room.state[1] = found[m] if task.trend else 0.0
+    for j in range(m):
+        room.state[2 + j] = found[j] - level
     return total
 
 
 @compiled
-def evaluate(
-    y: Array,
-    first: int,
-    season: int,
-    m: int,
-    trend: bool,
-    new_level: bool,
-    tied: bool,
-    states: int,
-    point: Array,
-    state: Array,
-    errors: Array,
-) -> float:
-    """Sum of squared one-step errors at a point `[alpha, beta, gamma, phi, level, trend, indices]`.
+def place(task: Task, point: Array, room: Room) -> None:
+    """Turn a point of the search into constants and starting states.
 
-    `tied` reads the third entry as a share of `1 - alpha`, which keeps a searched gamma
-    inside the usual region. `state` receives the starting states that were used.
+    A point holds the angles of the constants that are not held (NaN in `held`), then, where
+    they are searched, the distances of level, trend and indices from `start` in the task's units.
     """
-    constants = point[:4].copy()
-    if tied:
-        constants[2] *= 1.0 - constants[0]
-    if states == PROFILE:
-        return profile(y, season, m, trend, new_level, constants, state, errors)
-    state[:] = point[4:]
-    return run(y, first, season, m, new_level, constants, state.copy(), errors)
+    at = 0
+    for i in range(4):
+        room.constants[i] = task.held[i]
+        if math.isnan(task.held[i]):
+            room.constants[i] = LOWEST[i] + (HIGHEST[i] - LOWEST[i]) * (0.5 - 0.5 * math.cos(point[at]))
+            at += 1
+    if math.isnan(task.held[2]) and not task.new_level:
+        room.constants[2] *= 1.0 - room.constants[0]
+    for j in range(task.start.size):
+        room.state[j] = task.start[j]
+    if task.states == SEARCH:
+        for j in range(task.start.size):
+            if task.unit[j] > 0.0:
+                room.state[j] += task.unit[j] * point[at]
+                at += 1
+
+
+@compiled
+def deviance(task: Task, point: Array, room: Room) -> tuple[float, float]:
+    """Deviance at a point, infinite outside the positive region, and the sum of squares behind it."""
+    place(task, point, room)
+    if task.states == PROFILE:
+        total, logarithms = profile(task, room), 0.0
+    else:
+        total, logarithms = run(
+            task.y, task.first, task.error, task.season, task.m, task.new_level, room.constants, room.state,
+            room.errors, room.trace,
+        )
+    count = task.y.size - task.first
+    total = max(total, _PERFECT * count)
+    if not total < 1e300:
+        return np.inf, np.inf
+    return count * math.log(total) + logarithms, total
+
+
+@compiled
+def slopes(task: Task, point: Array, total: float, room: Room, gradient: Array) -> None:
+    """Derivatives of the deviance by the entries of the point that `room` was last filled at.
+
+    At the best starting states the deviance does not change with them, so where they
+    are solved for its derivatives by the constants are those at held states.
+    """
+    if task.states == PROFILE:
+        run(
+            task.y, task.first, task.error, task.season, task.m, task.new_level, room.constants, room.state,
+            room.errors, room.trace,
+        )
+    run_back(
+        task.y, task.first, task.error, task.season, task.m, task.new_level, room.constants, total, room.errors,
+        room.trace, room.gradient,
+    )
+    by = room.gradient
+    if math.isnan(task.held[2]) and not task.new_level:
+        share = room.constants[2] / (1.0 - room.constants[0])
+        by[0] -= by[2] * share
+        by[2] *= 1.0 - room.constants[0]
+    at = 0
+    for i in range(4):
+        if math.isnan(task.held[i]):
+            gradient[at] = by[i] * (HIGHEST[i] - LOWEST[i]) * 0.5 * math.sin(point[at])
+            at += 1
+    if task.states == SEARCH:
+        for j in range(task.start.size):
+            if task.unit[j] > 0.0:
+                gradient[at] = by[4 + j] * task.unit[j]
+                at += 1
+
+
+@compiled
+def line_search(
+    task: Task, room: Room, point: Array, move: Array, value: float, fall: float, longest: float, trial: Array,
+) -> tuple[float, float]:
+    """Go along `move` until the deviance falls enough (Armijo); return it, or infinity when it does not.
+
+    `fall` is its slope along the move. Steps are shortened by a parabola through what is known.
+    """
+    step = 1.0 if longest <= 3.0 else 3.0 / longest
+    for _attempt in range(20):
+        for i in range(point.size):
+            trial[i] = point[i] + step * move[i]
+        reached, total = deviance(task, trial, room)
+        if reached <= value + 1e-4 * step * fall:
+            return reached, total
+        if reached < np.inf:
+            bend = 2.0 * (reached - value - step * fall)
+            lowest = -fall * step * step / bend if bend > 0.0 else 0.5 * step
+            step = min(max(lowest, 0.1 * step), 0.5 * step)
+        else:
+            step *= 0.3
+    return np.inf, np.inf
+
+
+@compiled
+def begin(inverse: Array, angles: int) -> None:
+    """Set the inverse Hessian to its first guess."""
+    inverse[:, :] = 0.0
+    for i in range(inverse.shape[0]):
+        inverse[i, i] = 0.3 if i < angles else 0.1
+
+
+@compiled
+def times(matrix: Array, vector: Array, product: Array) -> None:
+    """Fill `product` with a symmetric matrix times a vector, row by row: the machine does several entries at once."""
+    product[:] = 0.0
+    for i in range(vector.size):
+        entry = vector[i]
+        for j in range(vector.size):
+            product[j] += matrix[i, j] * entry
+
+
+@compiled
+def learn(inverse: Array, step: Array, change: Array, product: Array) -> bool:
+    """Update the inverse Hessian by a step and the change of the gradient; False where that says nothing."""
+    size = step.size
+    along, square = 0.0, 0.0
+    for i in range(size):
+        along += step[i] * change[i]
+        square += change[i] * change[i]
+    if not along > 1e-10 * math.sqrt(square):
+        return False
+    times(inverse, change, product)
+    bend = 0.0
+    for i in range(size):
+        bend += product[i] * change[i]
+    weight = (1.0 + bend / along) / along
+    for i in range(size):
+        left, right = weight * step[i] - product[i] / along, step[i] / along
+        for j in range(size):
+            inverse[i, j] += left * step[j] - right * product[j]
+    return True
 
 
 @compiled
 def descend(
-    y: Array,
-    first: int,
-    season: int,
-    m: int,
-    trend: bool,
-    new_level: bool,
-    tied: bool,
-    states: int,
-    lower: Array,
-    upper: Array,
-    point: Array,
-    gain: float,
+    task: Task, room: Room, angles: int, point: Array, tolerance: float, hopeless: float
 ) -> float:
-    """Move `point` downhill inside its bounds; return its sum of squared errors.
+    """Move `point` downhill; return its deviance.
 
-    Entries whose bounds agree are held. The descent ends when a step gains less than
-    the share `gain` of the sum of squares.
+    The descent ends when two steps in a row gain less than `tolerance`, or when after 15
+    steps the deviance is more than 5 above `hopeless`, the best one known.
     """
-    n = y.size
-    free = np.nonzero(upper > lower)[0]
-    errors, trial = np.zeros(n), np.zeros(n)
-    state = np.zeros(point.size - 4)
-    best = evaluate(y, first, season, m, trend, new_level, tied, states, point, state, errors)
-    slopes = np.zeros((free.size, n))
-    damping = 1e-3
-    for _ in range(_ROUNDS):
-        if best <= _TINY * n:
+    size = point.size
+    inverse = np.empty((size, size))
+    gradient, other, move = np.empty(size), np.empty(size), np.empty(size)
+    trial, change, product = np.empty(size), np.empty(size), np.empty(size)
+    begin(inverse, angles)
+    fresh = True
+    value, total = deviance(task, point, room)
+    slopes(task, point, total, room, gradient)
+    perfect = _PERFECT * (task.y.size - task.first)
+    small, step = 0, 0
+    while step < _STEPS and total > perfect:
+        step += 1
+        fall, longest = 0.0, 0.0
+        times(inverse, gradient, move)
+        for i in range(size):
+            move[i] = -move[i]
+            fall += move[i] * gradient[i]
+            longest = max(longest, abs(move[i]))
+        reached = np.inf
+        if fall < 0.0:
+            reached, total_there = line_search(task, room, point, move, value, fall, longest, trial)
+        if not reached < np.inf:
+            if fresh:
+                break
+            begin(inverse, angles)
+            fresh = True
+            continue
+        total = total_there
+        slopes(task, trial, total, room, other)
+        for i in range(size):
+            move[i] = trial[i] - point[i]
+            change[i] = other[i] - gradient[i]
+            point[i] = trial[i]
+            gradient[i] = other[i]
+        if learn(inverse, move, change, product):
+            fresh = False
+        gain = value - reached
+        value = reached
+        small = small + 1 if gain < tolerance else 0
+        if small == 2 or (step == 15 and value > hopeless + 5.0):
             break
-        gradient = np.zeros(free.size)
-        for i in range(free.size):
-            place = free[i]
-            kept = point[place]
-            step = _STEP if kept + _STEP <= upper[place] else -_STEP
-            point[place] = kept + step
-            evaluate(y, first, season, m, trend, new_level, tied, states, point, state, trial)
-            point[place] = kept
-            for t in range(first, n):
-                slopes[i, t] = (trial[t] - errors[t]) / step
-                gradient[i] += slopes[i, t] * errors[t]
-        gram = np.zeros((free.size, free.size))
-        for i in range(free.size):
-            place = free[i]
-            outward = (point[place] <= lower[place] and gradient[i] > 0.0) or (
-                point[place] >= upper[place] and gradient[i] < 0.0
-            )
-            if outward:  # the entry stays on its bound in this round
-                slopes[i, :] = 0.0
-                gradient[i] = 0.0
-            for k in range(i + 1):
-                for t in range(first, n):
-                    gram[i, k] += slopes[i, t] * slopes[k, t]
-        before = best
-        for _attempt in range(12):
-            system, move = gram.copy(), -gradient
-            for i in range(free.size):
-                system[i, i] *= 1.0 + damping
-            solve(system, move)
-            candidate = point.copy()
-            for i in range(free.size):
-                place = free[i]
-                candidate[place] = min(max(point[place] + move[i], lower[place]), upper[place])
-            value = evaluate(y, first, season, m, trend, new_level, tied, states, candidate, state, trial)
+    return value
+
+
+@compiled
+def cold_starts(task: Task, room: Room, size: int, points: Array, values: Array) -> float:
+    """Best points of the coarse grid in eight groups, by low and high alpha, beta and gamma, and their deviances.
+
+    Returns the least sum of squares met, or infinity where every point leaves the positive region.
+    """
+    values[:] = np.inf
+    least, best = np.inf, np.inf
+    point = np.zeros(size)
+    free = np.isnan(task.held)
+    for a in range(4 if free[0] else 1):
+        for b in range(2 if free[1] else 1):
+            for g in range(2 if free[2] else 1):
+                at = 0
+                if free[0]:
+                    point[at] = _ALPHAS[a]
+                    at += 1
+                if free[1]:
+                    point[at] = _LOWS[b]
+                    at += 1
+                if free[2]:
+                    point[at] = _LOWS[g]
+                    at += 1
+                if free[3]:
+                    point[at] = _PHI
+                value, total = deviance(task, point, room)
+                group = a // 2 + 2 * b + 4 * g
+                if value < values[group]:
+                    values[group] = value
+                    points[group, :] = point
+                if value < best:
+                    best, least = value, total
+    return least
+
+
+@compiled
+def in_units(task: Task, least: float) -> None:
+    """Set the units of the free starting states from the sum of squares of the best cold start."""
+    typical = math.sqrt(least / (task.y.size - task.first))
+    level = max(abs(task.start[0]), 1e-3)
+    if task.error == MULTIPLICATIVE:
+        typical *= level
+    typical = max(typical, 1e-6)
+    task.unit[0] = typical
+    task.unit[1] = 0.2 * typical if task.trend else 0.0
+    if task.season != NO_SEASON:
+        task.unit[2:] = typical / level if task.season == MULTIPLICATIVE else typical
+
+
+@compiled
+def search(task: Task, starts: int, tolerance: float, room: Room) -> float:
+    """Best deviance found from the `starts` best cold starts; `room` then holds the constants used.
+
+    The task's `start` becomes the starting states found. Infinite, with `start` as it
+    was, where no cold start stays inside the positive region.
+    """
+    angles = 0
+    for i in range(4):
+        angles += math.isnan(task.held[i])
+    size = angles
+    if task.states == SEARCH:
+        for j in range(task.start.size):
+            size += task.unit[j] > 0.0
+    points, values = np.zeros((8, size)), np.empty(8)
+    found = np.zeros(size)
+    least = cold_starts(task, room, size, points, values)
+    best = np.inf
+    if least < np.inf:
+        in_units(task, least)
+        group = int(np.argmin(values))
+        for _start in range(starts):
+            value = descend(task, room, angles, points[group], tolerance, best)
             if value < best:
                 best = value
-                point[:] = candidate
-                errors[:] = trial
-                damping = max(damping / 8.0, 1e-10)
+                found[:] = points[group]
+            values[group] = np.inf
+            # The next start comes from the other half of alphas, where the deepest other valley mostly lies.
+            half = 1 - group % 2
+            group = half + 2 * int(np.argmin(values[half::2]))
+            if not values[group] < np.inf:
+                group = int(np.argmin(values))
+            if not values[group] < np.inf:
                 break
-            damping *= 6.0
-        if not before - best > gain * before:
-            break
+    place(task, found, room)
+    if task.states == PROFILE:
+        profile(task, room)
+    task.start[:] = room.state
     return best
 
 
 @compiled
-def search(
-    y: Array,
-    first: int,
-    season: int,
-    m: int,
-    trend: bool,
-    new_level: bool,
-    tied: bool,
-    states: int,
-    grid: Array,
-    blocks: int,
-    lower: Array,
-    upper: Array,
-    start: Array,
-) -> tuple[Array, Array, float]:
-    """Best point, its starting states and its sum of squared errors.
+def units(values: Array, positive: bool) -> tuple[float, float]:
+    """Centre and scale that bring data to order one.
 
-    `grid` holds constants, shape (points, 4), in `blocks` runs of equal length; the best
-    point of each run is a cold start. `start` holds the starting states that are held
-    or from which the search of the states begins.
+    Additive forms do not mind a shift, so a small movement on a large level keeps its
+    digits. A mean absolute distance neither overflows nor vanishes as squares would.
     """
-    state, errors = np.zeros(start.size), np.zeros(y.size)
-    found = np.zeros(4 + start.size)
-    least = np.inf
-    length = grid.shape[0] // blocks
-    for block in range(blocks):
-        point = np.zeros(4 + start.size)
-        point[4:] = start
-        chosen, lowest = block * length, np.inf
-        for row in range(block * length, (block + 1) * length):
-            point[:4] = grid[row]
-            value = evaluate(y, first, season, m, trend, new_level, tied, states, point, state, errors)
-            if value < lowest:
-                chosen, lowest = row, value
-        point[:4] = grid[chosen]
-        value = descend(y, first, season, m, trend, new_level, tied, states, lower, upper, point, _CLOSE)
-        if block == 0 or value < least * (1.0 - 1e-9):
-            least = value
-            found[:] = point
-    least = descend(y, first, season, m, trend, new_level, tied, states, lower, upper, found, _DONE)
-    evaluate(y, first, season, m, trend, new_level, tied, states, found, state, errors)
-    return found, state, least
+    n = values.size
+    mean, distance = 0.0, 0.0
+    for t in range(n):
+        mean += values[t] / n
+    for t in range(n):
+        distance += abs(values[t] - mean) / n
+    size = abs(mean) if abs(mean) > 0.0 else 1.0
+    if positive:
+        return 0.0, size
+    return mean, distance if distance > 1e-13 * size else size
+
+
+@compiled
+def fit_one(
+    values: Array, first: int, error: int, trend: bool, season: int, m: int, new_level: bool, held: Array,
+    free_states: bool, starts: int, tolerance: float, constants: Array, before: Array, after: Array, errors: Array,
+) -> tuple[float, float, float]:
+    """Fit one form to values in their own unit.
+
+    Parameters
+    ----------
+    held : (4,)
+        Constants, NaN where free; those the form does not have at 0 (phi: 1).
+    free_states : bool
+        Whether the starting states are estimated; otherwise `before` holds them.
+    constants, before, after, errors : (4,), (m + 2,), (m + 2,), (n,)
+        Filled with the constants used, the states before period `first` and after the
+        last one, and actual minus forecast.
+
+    Returns
+    -------
+    The deviance (infinite when every start leaves the region above zero that
+    multiplicative forms need), the sum of squared errors, and that of relative ones
+    (equal to the other when the error is additive).
+    """
+    n = values.size
+    positive = error == MULTIPLICATIVE or season == MULTIPLICATIVE
+    centre, scale = units(values, positive)
+    factor = 1.0 if season == MULTIPLICATIVE else scale
+    y = np.empty(n)
+    for t in range(n):
+        y[t] = (values[t] - centre) / scale
+    room = room_for(n, m, constants, errors)
+    unit = np.ones(m + 2)
+    if not trend:
+        unit[1] = 0.0
+    if season == NO_SEASON:
+        unit[2] = 0.0
+    if not free_states:
+        states = HOLD
+        before[0] = (before[0] - centre) / scale
+        before[1] /= scale
+        before[2:] /= factor
+    else:
+        states = SEARCH if positive else PROFILE
+        classical_start(y, m, trend, season, positive, before)
+    task = Task(y, first, error, trend, season, m, new_level, held, before, states, unit)
+    best = search(task, starts, tolerance, room)
+    if states == SEARCH:
+        if not best < np.inf:
+            # Every path from the classical start left the region: begin again from a level without trend.
+            before[0], before[1] = np.mean(y), 0.0
+            before[2:] = 0.0 if season != MULTIPLICATIVE else 1.0
+            best = search(task, starts, tolerance, room)
+        balance(season, before)
+    after[:] = before
+    total, _ = run(y, first, error, season, m, new_level, constants, after, errors, room.trace)
+    square = 0.0
+    for t in range(first, n):
+        square += errors[t] * errors[t]
+    for t in range(n):
+        errors[t] *= scale
+    for state in (before, after):
+        state[0] = state[0] * scale + centre
+        state[1] *= scale
+        state[2:] *= factor
+    square *= scale * scale
+    best += (n - first) * (2.0 * math.log(scale) - math.log(n - first))
+    return best, square, total if error == MULTIPLICATIVE else square
+
+
+@compiled
+def balance(season: int, state: Array) -> None:
+    """Give additive indices the mean 0 and factors the mean 1: with the level they are known only up to that."""
+    mean = np.mean(state[2:])
+    if season == ADDITIVE:
+        state[0] += mean
+        state[2:] -= mean
+    elif season == MULTIPLICATIVE:
+        state[:2] *= mean
+        state[2:] /= mean
+
+
+@compiled
+def all_forms(
+    values: Array, m: int, codes: NDArray[np.int64], held: Array, starts: int, tolerance: float, forecasts: Array,
+    fitted: Array, aicc: Array, constants: Array, states: Array, sigma2: Array,
+) -> None:
+    """Fit every form of a list to one series.
+
+    Parameters
+    ----------
+    values : (n,)
+    m : int
+        Season length; 1 for none.
+    codes : (forms, 3)
+        Error (ADDITIVE or MULTIPLICATIVE), trend (0 none, 1 linear, 2 damped), season.
+    held : (4,)
+        Constants to hold in every form that has them, NaN where free.
+    starts : int
+        Cold starts descended from, at most 4.
+    tolerance : float
+        Gain of the deviance that no longer counts.
+    forecasts, fitted : (forms, horizon), (forms, n)
+        Filled, as are the rest, for every form that can be had.
+    aicc : (forms,)
+        The deviance plus Akaike's correction for short series (Hurvich & Tsai 1989);
+        infinite where the form cannot be had: a season takes `m + 5` values, factors and
+        relative errors values above zero, the criterion two values more than constants
+        and states.
+    constants, states, sigma2 : (forms, 4), (forms, m + 2), (forms,)
+        As used, after the last period, and the residual variance on the degrees of
+        freedom left (of relative errors when the error is multiplicative).
+    """
+    n = values.size
+    lowest = np.min(values)
+    own, none = np.empty(4), (0.0, 0.0, 0.0, 1.0)
+    before, errors = np.empty(m + 2), np.empty(n)
+    for f in range(codes.shape[0]):
+        error, season = codes[f, 0], codes[f, 2]
+        trend, damped = codes[f, 1] > 0, codes[f, 1] == 2
+        cycle = m if season != NO_SEASON else 1
+        for i in range(4):
+            own[i] = none[i]
+        count = 2
+        for i in range(4):
+            if i == 0 or (i == 1 and trend) or (i == 2 and season != NO_SEASON) or (i == 3 and damped):
+                own[i] = held[i]
+                count += math.isnan(held[i])
+        count += trend + (cycle - 1)
+        aicc[f] = np.inf
+        seasonal = season == NO_SEASON or (m > 1 and n >= m + 5)
+        positive = lowest > 0.0 or (error == ADDITIVE and season != MULTIPLICATIVE)
+        if not (seasonal and positive and n - count - 1 > 0):
+            continue
+        after = states[f, : cycle + 2]
+        best, _, total = fit_one(
+            values, 0, error, trend, season, cycle, False, own, True, starts, tolerance, constants[f],
+            before[: cycle + 2], after, errors,
+        )
+        if not best < np.inf:
+            continue
+        aicc[f] = best + 2.0 * count + 2.0 * count * (count + 1) / (n - count - 1)
+        sigma2[f] = total / (n - count + 1)
+        for t in range(n):
+            fitted[f, t] = values[t] - errors[t]
+        project(n, season, cycle, constants[f, 3], after, forecasts[f])
+
+
+@compiled
+def mix(
+    n: int, m: int, codes: NDArray[np.int64], weights: Array, constants: Array, states: Array, lowest: float,
+    path: Array,
+) -> None:
+    """Fill `path` with the weighted mean of the forecasts of forms, each at least `lowest`.
+
+    `n`, `m`, `codes`, `constants` and `states` are those of `all_forms`; forms of weight 0 are not read.
+    """
+    path[:] = 0.0
+    one = np.empty(path.size)
+    for f in range(codes.shape[0]):
+        if weights[f] > 0.0:
+            season = codes[f, 2]
+            cycle = m if season != NO_SEASON else 1
+            project(n, season, cycle, constants[f, 3], states[f, : cycle + 2], one)
+            for lead in range(path.size):
+                path[lead] += weights[f] * max(one[lead], lowest)

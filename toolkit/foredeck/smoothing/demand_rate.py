@@ -13,7 +13,7 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from foredeck.compiled.intermittent import croston, tsb
+from foredeck.compiled.recursions import croston, tsb
 from foredeck.smoothing.fitted import Fitted, from_forecasts
 
 Array = NDArray[np.float64]

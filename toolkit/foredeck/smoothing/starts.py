@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from foredeck.compiled.recursions import MULTIPLICATIVE, NO_SEASON
+from foredeck.compiled.recursions import MULTIPLICATIVE, NO_SEASON, classical_start
 from foredeck.errors import MethodError
 
 Array = NDArray[np.float64]
@@ -24,7 +24,9 @@ def named_start(name: str, values: Array, m: int, trend: bool, season: int) -> A
     if name == "first value":
         return _first_value(values, m, trend, season)
     if name == "classical":
-        return _classical(values, m, trend, season)
+        state = np.empty(m + 2)
+        classical_start(values, m, trend, season, season == MULTIPLICATIVE, state)
+        return state
     raise MethodError(
         f"The starting states are {name!r}.", where="initial",
         allowed=", ".join(map(repr, NAMED)) + ", or a mapping of level, trend, season and after",
@@ -72,37 +74,4 @@ def _first_value(values: Array, m: int, trend: bool, season: int) -> Array:
     state[0] = values[:m].mean()
     state[1] = (values[m : 2 * m].mean() - state[0]) / m if trend else 0.0
     state[2:] = values[:m] / state[0] if season == MULTIPLICATIVE else values[:m] - state[0]
-    return state
-
-
-def _classical(values: Array, m: int, trend: bool, season: int) -> Array:
-    """Hyndman, Koehler, Ord & Snyder (2008), section 2.6.1.
-
-    The season comes from the first four seasons (as many as there are), level and trend
-    from a line through the first ten seasonally adjusted values.
-    """
-    state = np.zeros(m + 2)
-    adjusted = values
-    if season != NO_SEASON:
-        few = values[: m * min(4, values.size // m)]
-        weights = np.ones(m + 1) / m if m % 2 == 0 else np.ones(m) / m
-        if m % 2 == 0:
-            weights[0] = weights[-1] = 0.5 / m
-        smooth = np.convolve(few, weights, mode="valid")
-        middle = few[m // 2 : m // 2 + smooth.size]
-        distance = middle / smooth if season == MULTIPLICATIVE else middle - smooth
-        position = np.arange(m // 2, m // 2 + smooth.size) % m
-        indices = np.bincount(position, distance, m) / np.bincount(position, minlength=m)
-        indices = indices / indices.mean() if season == MULTIPLICATIVE else indices - indices.mean()
-        state[2:] = indices
-        repeated = np.resize(indices, values.size)
-        adjusted = values / repeated if season == MULTIPLICATIVE else values - repeated
-    few = adjusted[:10]
-    time = np.arange(1, few.size + 1) - (few.size + 1) / 2
-    slope = float(time @ few / (time @ time)) if few.size > 1 else 0.0
-    level = float(few.mean()) - slope * (few.size + 1) / 2
-    if season == MULTIPLICATIVE and level <= 0:
-        level, slope = float(few.mean()), 0.0  # a steep rise from nothing: factors need a level above zero
-    state[0] = level
-    state[1] = slope if trend else 0.0
     return state

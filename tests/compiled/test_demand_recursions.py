@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from foredeck.compiled.intermittent import croston, tsb
+from foredeck.compiled.recursions import croston, tsb
 from references import plain_smoothing as plain
 
 
