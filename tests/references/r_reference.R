@@ -184,7 +184,8 @@ portmanteau <- function(name, lags) {
   list(series = name, lags = lags, statistic = found$statistic[[1]], p = found$p.value)
 }
 
-ljung_box <- list(nile = portmanteau("Nile", 10), lake = portmanteau("LakeHuron", 10), sales = portmanteau("BJsales", 10))
+ljung_box <- list(nile = portmanteau("Nile", 10), lake = portmanteau("LakeHuron", 10),
+                  sales = portmanteau("BJsales", 10))
 
 record <- list(
   source = "base R, packages stats and datasets: HoltWinters, stl, lowess, arima, StructTS, Box.test",
