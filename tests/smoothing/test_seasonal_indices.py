@@ -110,6 +110,14 @@ def test_a_method_without_season_is_that_method_on_adjusted_values_with_the_seas
     assert (fitted.method, fitted.title, fitted.season_length) == ("seasonal_drift", "Seasonal drift", 12)
 
 
+def test_whole_numbers_and_rows_that_must_not_be_written_to_have_the_same_indices(trended):
+    whole = np.rint(trended)
+    frozen = np.repeat(whole, 2)[::2]
+    frozen.setflags(write=False)
+    for values in (whole.astype(np.int64), frozen):
+        np.testing.assert_array_equal(seasonal_indices(values, 12)[0], seasonal_indices(whole, 12)[0])
+
+
 def test_without_season_a_wrapped_method_is_the_method_itself(trended):
     fitted = fit_adjusted(lambda y, m, _: fit_naive(y, m), trended, 1, method="n", title="N")
     np.testing.assert_array_equal(fitted.fitted, fit_naive(trended, 1).fitted)

@@ -82,6 +82,13 @@ def test_a_perfect_season_on_a_level_is_repeated_and_was_forecast_from_the_secon
     np.testing.assert_allclose(fitted.forecast(6), np.resize(values[:4], 6), rtol=1e-9)
 
 
+def test_what_rounding_leaves_of_a_perfect_season_chooses_no_alpha():
+    values = np.resize([7.3, 11.9, 10.1, 8.7], 27)
+    assert fit_theta(values, 4).constants["alpha"] == 0.01
+    assert fit_optimised_theta(values, 4).constants["alpha"] == 0.02
+    assert fit_dynamic_theta(values, 4).constants["alpha"] == pytest.approx(np.mean(ALPHAS), rel=1e-12)
+
+
 @pytest.mark.parametrize("fit", METHODS)
 def test_a_shift_and_a_change_of_unit_only_shift_and_scale_the_forecast(fit, walk):
     expected = fit(walk - 320, 1).path(8)

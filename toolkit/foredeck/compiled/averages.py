@@ -31,6 +31,7 @@ HIGHEST_WEIGHT = 0.98
 """Largest weight of the trend line in the dynamic theta method: a theta of 50."""
 
 _PERFECT = 1e-20  # a mean squared error of scaled data under this is a perfect fit
+_ROUNDING = 1e-14  # distances from the mean under this part of it are rounding
 _TIE = 1e-10  # losses that differ by less than this part are equal: rounding must not choose
 
 
@@ -38,15 +39,18 @@ _TIE = 1e-10  # losses that differ by less than this part are equal: rounding mu
 def scaled(values: Array) -> tuple[Array, float, float]:
     """Return values of order one, and the centre and the scale they had.
 
-    The centre is the mean, the scale the mean absolute distance from it, or 1 if that is 0.
-    Neither sum nor squares are formed, which may leave the number range.
+    The centre is the mean, the scale the mean absolute distance from it; where that is no
+    more than rounding, the values are constant and the scale is their size, or 1 for
+    zeros. Neither sum nor squares are formed, which may leave the number range.
     """
     centre, distance = 0.0, 0.0
     for t in range(values.size):
         centre += values[t] / values.size
     for t in range(values.size):
         distance += abs(values[t] - centre) / values.size
-    scale = distance if distance > 0.0 else 1.0
+    scale = distance
+    if distance <= _ROUNDING * abs(centre):
+        scale = abs(centre) if centre != 0.0 else 1.0
     return (values - centre) / scale, centre, scale
 
 
@@ -160,10 +164,11 @@ def theta(values: Array, alphas: Array, one_step: Array) -> tuple[float, float, 
             miss = line[t] - levels[i]
             losses[i] += abs(miss)
             levels[i] += alphas[i] * miss
-    best = 0
-    for i in range(1, alphas.size):
-        if losses[i] < losses[best] * (1.0 - _TIE):
-            best = i
+    best, least = 0, np.inf
+    for i in range(alphas.size):
+        loss = max(losses[i], math.sqrt(_PERFECT) * n)
+        if loss < least * (1.0 - _TIE):
+            best, least = i, loss
     level = line[0]
     one_step[0] = np.nan
     for t in range(1, n):
@@ -313,7 +318,7 @@ def dynamic_theta_alpha(values: Array, alphas: Array) -> float:
     state, one_step = np.empty(5), np.empty(n)
     best, least = 0, np.inf
     for i in range(alphas.size):
-        sse = dynamic_theta_errors(y, means, slopes, alphas[i], state, one_step)
+        sse = max(dynamic_theta_errors(y, means, slopes, alphas[i], state, one_step), _PERFECT * n)
         if sse < least * (1.0 - _TIE):
             best, least = i, sse
     coarse = float(alphas[best])

@@ -93,6 +93,7 @@ def seasonal_indices(values: Array, season_length: int) -> tuple[Array, bool]:
     James & Stein (1961), Proceedings of the Fourth Berkeley Symposium 1, 361-379.
     Miller & Williams (2003), International Journal of Forecasting 19, 669-684.
     """
+    values = np.array(values, dtype=np.float64)  # a writable row: for any other the compiler would begin anew
     indices = np.empty(max(season_length, 1))
     multiplicative = bool(values.min() > 0.0)
     averages.seasonal_indices(values, indices.size, multiplicative, indices)
