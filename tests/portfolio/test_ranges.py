@@ -2,11 +2,21 @@
 
 from __future__ import annotations
 
+from types import SimpleNamespace
+
 import numpy as np
 import pytest
 from scipy import stats
 
-from foredeck.portfolio.ranges import MIN_ORIGINS, mean_correlation, multipliers
+from foredeck.portfolio.ranges import (
+    HALF_LIFE,
+    MIN_ORIGINS,
+    mean_correlation,
+    multipliers,
+    scales,
+    weighted_quantiles,
+)
+from portfolio.invented import alone_of
 
 LEVELS = (50, 80, 90)
 
@@ -41,15 +51,46 @@ def test_ranges_of_an_origin_rest_only_on_errors_known_then() -> None:
     assert not np.allclose(after[0], before[0])
 
 
-def test_few_origins_widen_the_range() -> None:
-    # symmetric errors, so that both quantile rules agree: only the widening is left
-    once = np.array([-2.0, -1.0, 1.0, 2.0])
+def test_few_origins_widen_the_range_and_old_origins_are_fewer_than_they_count() -> None:
+    # errors of one size, so that every quantile is 1: only the widening is left
+    once = np.array([-1.0, 1.0, -1.0, 1.0])
     few = multipliers(np.concatenate([[0.0], once])[None, :, None], (90,))[0, 0, 0, 0]
     many = multipliers(np.concatenate([[0.0], np.tile(once, 100)])[None, :, None], (90,))[0, 0, 0, 0]
-    # t with 4 degrees of freedom against t with 400, 95th percentiles (from printed tables): 2.132 and 1.649
-    quantiles = np.quantile(once, 0.95) + np.quantile(np.abs(once), 0.9)
-    quantiles_many = np.quantile(np.tile(once, 100), 0.95) + np.quantile(np.abs(np.tile(once, 100)), 0.9)
-    assert few / many == pytest.approx(2.132 / 1.649 * quantiles / quantiles_many, rel=1e-3)
+    # Kish (1965): weights 1, r, r^2, ... count as (1 + r) / (1 - r) origins when there are many of them
+    r = 0.5 ** (1 / HALF_LIFE)
+    four = r ** np.arange(4)
+    effective = four.sum() ** 2 / (four**2).sum()
+    assert effective < 4
+    assert few == pytest.approx(stats.t.ppf(0.95, effective) / stats.norm.ppf(0.95), rel=1e-9)
+    assert many == pytest.approx(stats.t.ppf(0.95, (1 + r) / (1 - r)) / stats.norm.ppf(0.95), rel=1e-9)
+
+
+def test_weighted_quantiles_are_those_of_numpy_when_all_count_the_same_and_of_repeats_when_some_count_double() -> None:
+    values = np.random.default_rng(7).normal(size=31)
+    shares = np.array([0.0, 0.05, 0.25, 0.5, 0.9, 1.0])
+    np.testing.assert_allclose(weighted_quantiles(values, np.full(31, 3.0), shares), np.quantile(values, shares))
+    heavy = np.array([1.0, 2.0, 3.0])
+    # a value that counts a thousand times as much as the others holds nearly the whole span
+    assert weighted_quantiles(heavy, np.array([1.0, 1000.0, 1.0]), np.array([0.5]))[0] == pytest.approx(2.5, abs=0.01)
+
+
+def test_recent_errors_count_more_than_old_ones() -> None:
+    errors = np.concatenate([[0.0], np.tile([1.0, -1.0], 12), np.tile([9.0, -9.0], 12)])[None, :, None]
+    recent_small = multipliers(errors, (50,))[0, 0, 0, 0]
+    recent_large = multipliers(np.concatenate([[0.0], errors[0, :0:-1, 0]])[None, :, None], (50,))[0, 0, 0, 0]
+    assert recent_small < 2 < 8 < recent_large
+
+
+def error_sizes(alone: object, disagreement: float) -> np.ndarray:
+    procedure = SimpleNamespace(
+        own_error=np.full(21, 1.0), own_count=np.full(21, 20), forecasts=np.full((21, 3), 100.0),
+        level=np.full(21, 100.0), disagreement=np.full((21, 3), disagreement))
+    return scales(alone, procedure, nonnegative=True)  # type: ignore[arg-type]
+
+
+def test_the_scale_grows_with_the_disagreement_of_the_methods_by_its_fifth_root() -> None:
+    alone = alone_of(1, horizon=3)
+    np.testing.assert_allclose(error_sizes(alone, 3.2) / error_sizes(alone, 0.1), 32.0 ** (1 / 5))
 
 
 def test_a_first_forecast_without_any_past_error_still_gets_a_wide_range() -> None:

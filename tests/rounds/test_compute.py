@@ -13,9 +13,9 @@ from small_round import SERIES, write_folder
 from foredeck.errors import SettingsError
 from foredeck.intake.files import read_source
 from foredeck.periods import FinancialYear
+from foredeck.portfolio import spread
 from foredeck.portfolio.one_series import study
 from foredeck.portfolio.totals import windows
-from foredeck.rounds import compute as passes
 from foredeck.rounds.compute import Computed, compute_round, data_fingerprint
 from foredeck.rounds.source import closing_of
 from foredeck.settings.file import load_settings
@@ -120,14 +120,14 @@ def test_a_study_with_the_rounds_fit_equals_the_round(settings: Settings, comput
 
 def test_a_fault_in_one_series_does_not_stop_the_others(settings: Settings, computed: Computed,
                                                         monkeypatch: pytest.MonkeyPatch) -> None:
-    whole = passes.examine
+    whole = spread.examine
 
     def breaks(series: Any, *rest: Any) -> Any:
         if series.name == "north/twine":
             raise ZeroDivisionError("planted")
         return whole(series, *rest)
 
-    monkeypatch.setattr(passes, "examine", breaks)
+    monkeypatch.setattr(spread, "examine", breaks)
     broken = run(settings)
     row = broken.tables["series"].set_index("series").loc["north/twine"]
     assert (row["status"], row["reason"]) == ("failed", "ZeroDivisionError: planted")

@@ -8,6 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from foredeck.compiled.recursions import MULTIPLICATIVE
+from foredeck.errors import MethodError
 from foredeck.smoothing.catalogue import METHODS, fit
 from foredeck.smoothing.state_space import Form, fit_form, spread
 
@@ -92,13 +93,17 @@ def test_a_perfect_season_is_repeated_as_it_is(name):
     np.testing.assert_allclose(fit(name, season, 4).forecast(8), season[:8], rtol=1e-5)
 
 
-NO_SEASON = [name for name in METHODS if not METHODS[name].seasonal]
+NO_SEASON = [name for name in METHODS if METHODS[name].season == "none"]
 
 
 @pytest.mark.parametrize("name", NO_SEASON)
 @pytest.mark.parametrize("values", [[5.0, 8.0], [0.0, 0.0], [-3.0, 4.0]])
 def test_two_periods_give_finite_forecasts(name, values):
-    assert np.isfinite(fit(name, np.array(values), 1).forecast(3)).all()
+    if usable(name, np.array(values)):
+        assert np.isfinite(fit(name, np.array(values), 1).forecast(3)).all()
+    else:
+        with pytest.raises(MethodError, match="needs values above zero"):
+            fit(name, np.array(values), 1)
 
 
 @pytest.mark.parametrize("name", [name for name in NO_SEASON if name != "differenced_ses"])

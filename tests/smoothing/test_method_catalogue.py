@@ -12,7 +12,7 @@ import pytest
 from foredeck.errors import MethodError
 from foredeck.intake.history import SeriesHistory
 from foredeck.periods import Frequency
-from foredeck.smoothing.catalogue import METHODS, fit, smooth
+from foredeck.smoothing.catalogue import METHODS, fit, smooth, usual_methods
 
 
 @pytest.fixture(scope="module")
@@ -33,24 +33,38 @@ def said(call):
     return str(caught.value)
 
 
-def test_the_catalogue_holds_the_seventeen_methods_under_their_own_names_and_with_a_source():
-    assert list(METHODS) == [
-        "naive", "seasonal_naive", "mean", "moving_average", "drift", "ses", "differenced_ses",
-        "seasonally_differenced_ses", "holt", "damped_holt", "holt_winters_additive",
-        "damped_holt_winters_additive", "holt_winters_multiplicative", "damped_holt_winters_multiplicative",
-        "croston", "sba", "tsb",
-    ]
+FORMS = ("ses", "seasonal_ses_additive", "seasonal_ses_multiplicative", "holt", "damped_holt", "holt_winters_additive",
+         "damped_holt_winters_additive", "holt_winters_multiplicative", "damped_holt_winters_multiplicative")
+
+
+def test_the_catalogue_holds_every_method_once_under_its_own_name_and_with_a_source():
+    assert set(METHODS) == {
+        "naive", "seasonal_naive", "mean", "moving_average", "drift", "drift_with_season",
+        "differenced_ses", "seasonally_differenced_ses", *FORMS, *(f"{form}_relative" for form in FORMS),
+        "theta", "optimised_theta", "dynamic_theta", "averaged_damped", "best_form", "weighted_forms",
+        "temporal_hierarchy", "log_ses", "log_holt", "log_damped_holt", "log_theta", "log_optimised_theta",
+        "log_dynamic_theta", "log_averaged_damped", "croston", "sba", "tsb",
+    }
     for name, entry in METHODS.items():
         assert entry.name == name
         assert any(character.isdigit() for character in entry.source)
         assert entry.sentence.endswith(".")
+    assert len({entry.title for entry in METHODS.values()}) == len(METHODS)
+
+
+@pytest.mark.parametrize("season_length", [1, 4, 12, 52])
+def test_the_usual_methods_are_in_the_catalogue_and_a_hierarchy_is_only_among_them_for_months(season_length):
+    usual = usual_methods(season_length)
+    assert set(usual) <= set(METHODS)
+    assert ("temporal_hierarchy" in usual) == (season_length == 12) != ("weighted_forms" in usual)
 
 
 @pytest.mark.parametrize("name", list(METHODS))
 def test_a_fit_names_itself_as_the_catalogue_does_and_reports_the_catalogue_s_constants(values, name):
     fitted = fit(name, values, 4)
     assert (fitted.method, fitted.title) == (name, METHODS[name].title)
-    assert tuple(fitted.constants) == METHODS[name].constants
+    # averages and mixtures report what of their constants there was to average
+    assert set(fitted.constants) == set(METHODS[name].constants) or METHODS[name].season == "found"
     assert fitted.fitted.shape == fitted.residuals.shape == values.shape
     np.testing.assert_allclose(fitted.fitted + fitted.residuals, np.where(np.isnan(fitted.fitted), np.nan, values))
     assert fitted.sse == pytest.approx(np.nansum(fitted.residuals**2), rel=1e-9)

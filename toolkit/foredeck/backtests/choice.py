@@ -1,4 +1,4 @@
-"""Which methods speak in the forecast, settled by backtest errors, never by training errors."""
+"""Methods compared by their backtest errors, never by training errors."""
 
 from __future__ import annotations
 
@@ -13,11 +13,6 @@ from foredeck.smoothing.catalogue import METHODS
 
 Array = NDArray[np.float64]
 Flags = NDArray[np.bool_]
-
-NEAR_TIE = 0.02
-"""Methods within so much of the best relative error are as good: the simplest of them is taken.
-
-A smaller lead tells more of luck than of the method."""
 
 
 def equal_weights(pool: Flags) -> Array:
@@ -84,46 +79,6 @@ def relative_errors(methods: Sequence[str], errors: Array) -> Array:
         theirs = mean_of(np.where(both, np.abs(benchmark) ** power, np.nan), axis=0) ** (1 / power)
         result[row] = float(mean_of(_ratio(own, theirs)))
     return result
-
-
-def choose(methods: Sequence[str], errors: Array, pool: Flags) -> int:
-    """Position of the one method that is to speak for the series.
-
-    The smallest relative error (`relative_errors`) wins; of all methods within 2 % of it
-    (`NEAR_TIE`), the one that stands first in the catalogue, where simple methods stand
-    before elaborate ones. Where no error is known yet, the first of the pool in that order.
-
-    Parameters
-    ----------
-    methods : sequence of str, length M
-    errors : array, shape (M, origins, leads); the series' unit
-        Actual minus forecast; NaN where not known at the time of the choice.
-    pool : array of bool, shape (M,)
-        Methods that may be chosen; at least one.
-
-    Returns
-    -------
-    int
-
-    Raises
-    ------
-    ShapeError
-        if the pool is empty or does not fit the methods, and as for `relative_errors`.
-    """
-    allowed = np.asarray(pool, dtype=bool)
-    if allowed.shape != (len(methods),) or not allowed.any():
-        raise ShapeError(
-            f"The pool has the shape {allowed.shape} and {int(allowed.sum())} methods.", where="choice",
-            allowed=f"shape ({len(methods)},), at least one method",
-            do="Name the methods that may be chosen.",
-        )
-    relative = np.where(allowed, relative_errors(methods, errors), np.nan)
-    order = list(METHODS)
-    candidates: list[int] = np.flatnonzero(allowed).tolist()
-    if not np.isnan(relative).all():
-        best = np.nanmin(relative)
-        candidates = np.flatnonzero(relative <= best * (1 + NEAR_TIE)).tolist()
-    return min(candidates, key=lambda row: order.index(methods[row]))
 
 
 def _ratio(own: Array, theirs: Array) -> Array:

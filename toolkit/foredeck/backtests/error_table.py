@@ -5,7 +5,6 @@ from __future__ import annotations
 import html
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
-from functools import cache
 
 import numpy as np
 import pandas as pd
@@ -14,7 +13,8 @@ from numpy.typing import NDArray
 from foredeck.backtests.choice import relative_errors
 from foredeck.backtests.measures import mase_scale, mean_of
 from foredeck.backtests.origins import known_counts
-from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern
+from foredeck.checks.eligibility import ineligible_reason
+from foredeck.checks.intermittence import average_demand_interval
 from foredeck.checks.repairs import repaired
 from foredeck.errors import MethodError, ShapeError
 from foredeck.intake.history import SeriesHistory
@@ -52,6 +52,11 @@ class Cube:
         """Actual minus forecast, shape (M, O, H)."""
         difference: Array = self.actual[None] - self.forecasts
         return difference
+
+    def known_cells(self, known: int) -> NDArray[np.bool_]:
+        """Which cells (O, H) had their actual known when `known` periods were."""
+        last = self.known[:, None] + np.arange(1, self.actual.shape[1] + 1)[None, :]
+        return np.asarray((last <= known) & np.isfinite(self.actual))
 
 
 @dataclass(frozen=True, eq=False)
@@ -227,13 +232,8 @@ def backtest(
     def prepare(seen: Array) -> Array:
         return repaired(seen, m, nonnegative=faulty_sign)
 
-    @cache
-    def pattern_at(count: int) -> Pattern:
-        seen = prepare(values[:count])
-        return pattern(seen, m, used=seen)
-
     def reason(name: str, seen: Array) -> str:
-        return ineligible_reason(METHODS[name].requirements, seen, m, pattern_at(seen.size))
+        return ineligible_reason(METHODS[name].requirements, seen, m, average_demand_interval(seen))
 
     def eligible(name: str, seen: Array) -> bool:
         return reason(name, seen) == ""

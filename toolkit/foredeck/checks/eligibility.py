@@ -11,6 +11,7 @@ import numpy as np
 from foredeck.checks.decomposition import decompose, strength_text, taken_apart
 from foredeck.checks.expectation import Array
 from foredeck.checks.intermittence import (
+    ADI_LIMIT,
     DemandClass,
     average_demand_interval,
     demand_class,
@@ -128,7 +129,7 @@ def pattern(values: Array, season_length: int, *, used: Array | None = None) -> 
                    parts.season_strength, parts.words)
 
 
-def ineligible_reason(requirements: Requirements, values: Array, season_length: int, pattern: Pattern) -> str:
+def ineligible_reason(requirements: Requirements, values: Array, season_length: int, interval: float) -> str:
     """Say why a method may not be used on a series.
 
     Parameters
@@ -139,8 +140,8 @@ def ineligible_reason(requirements: Requirements, values: Array, season_length: 
         What the method would be fitted to; NaN periods count as periods.
     season_length : int
         Periods a year (1, 4, 12, 52).
-    pattern : Pattern
-        What the series holds.
+    interval : float; periods
+        Average demand interval of the series (`intermittence.average_demand_interval`).
 
     Returns
     -------
@@ -153,9 +154,9 @@ def ineligible_reason(requirements: Requirements, values: Array, season_length: 
     needed = max(requirements.min_periods, int(np.ceil(requirements.min_seasons * season_length)))
     if n < needed:
         return f"needs {needed} periods, has {n}"
-    if requirements.intermittent == "never" and pattern.intermittent:
-        return f"is not for intermittent demand; here it comes in one period of {pattern.adi:.1f}"
-    if requirements.intermittent == "only" and not pattern.intermittent:
+    if requirements.intermittent == "never" and interval >= ADI_LIMIT:
+        return f"is not for intermittent demand; here it comes in one period of {interval:.1f}"
+    if requirements.intermittent == "only" and interval < ADI_LIMIT:
         return "is for intermittent demand only; here there is demand in almost every period"
     if requirements.positive and not bool((values > 0).all()):
         low = int((~(values > 0)).sum())

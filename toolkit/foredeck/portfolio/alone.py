@@ -7,8 +7,8 @@ the pass can be spread over workers and a fault stops one series only.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
 from functools import cache
 
 import numpy as np
@@ -20,15 +20,19 @@ from foredeck.backtests.measures import mase_scale
 from foredeck.checks.differencing import difference
 from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern
 from foredeck.checks.findings import find
+from foredeck.checks.intermittence import ADI_LIMIT, average_demand_interval
 from foredeck.checks.repairs import repaired
 from foredeck.errors import MethodError, SettingsError
 from foredeck.intake.history import SeriesHistory
-from foredeck.smoothing.catalogue import METHODS, fit
+from foredeck.smoothing.catalogue import METHODS, fit, usual_methods
 
 Array = NDArray[np.float64]
 
 MIN_PERIODS = 4
 """Below this many periods with a value a series is listed, not forecast."""
+
+FEWEST_KNOWN = 8
+"""Periods known at the first origin, where the history allows: errors from fewer tell little of today's."""
 
 YEAR_OF_ORIGINS = {12: 12, 4: 8, 52: 26, 1: 6}
 """How many origins one reading of reliability rests on, by season length (common practice:
@@ -46,8 +50,8 @@ class ForecastOptions:
     constants: Mapping[str, float] | None = None
     nonnegative: bool = True
 
-    def allowed(self) -> tuple[str, ...]:
-        """Names of the methods to compute, in the catalogue's order: those asked for, and the benchmarks.
+    def allowed(self, season_length: int) -> tuple[str, ...]:
+        """Names of the methods to compute, in the catalogue's order: those that may speak, and the benchmarks.
 
         Raises
         ------
@@ -58,12 +62,12 @@ class ForecastOptions:
             if name not in METHODS:
                 raise SettingsError(f"method {name!r} is not in the catalogue", where="[forecast] methods",
                                     allowed=", ".join(METHODS), do="take the name from the list")
-        return tuple(name for name, method in METHODS.items()
-                     if not self.methods or name in self.methods or method.family == "benchmark")
+        voices = self.voices(season_length)
+        return tuple(name for name, method in METHODS.items() if name in voices or method.family == "benchmark")
 
-    def asked_for(self, method: str) -> bool:
-        """Whether a method may speak in the forecast; benchmarks always stand beside it."""
-        return not self.methods or method in self.methods
+    def voices(self, season_length: int) -> tuple[str, ...]:
+        """Names of the methods that may speak in a forecast: those asked for, or the usual ones."""
+        return self.methods or usual_methods(season_length)
 
 
 @dataclass(frozen=True)
@@ -146,32 +150,24 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
         raise MethodError(f"{series.name} cannot be forecast: {reason}", where=series.name, reason=reason)
     m, horizon = series.season_length, options.horizon
     raw, periods = _to_closing(series, closing)
-    methods = options.allowed()
-
-    # every origin needs its repaired values three times: each is made once, from what was known then
-    known_then = cache(lambda n: repaired(raw[:n], m, nonnegative=options.nonnegative))
-    seen = cache(lambda n: pattern(known_then(n), m, used=known_then(n)))
-
-    def prepare(known: Array) -> Array:
-        values: Array = known_then(len(known))
-        return values
-
-    used = prepare(raw)
-
-    def eligible(method: str, known: Array) -> bool:
-        # the error table must know only what a forecaster knew at that origin
-        return not ineligible_reason(METHODS[method].requirements, known, m, seen(len(known)))
-
+    methods = options.allowed(m)
+    then = _Then(raw, m, options.nonnegative)
+    used = then.repaired(len(raw))
     known = _known_counts(len(raw), m, horizon)
-    cube = build_cube(raw, m, horizon, methods, known, prepare, eligible, options.constants)
-    now = seen(len(raw))
-    reasons = {name: ineligible_reason(METHODS[name].requirements, used, m, now) for name in methods}
+    cube = build_cube(raw, m, horizon, methods, known, lambda seen: then.repaired(len(seen)),
+                      lambda name, seen: not then.reason(name, len(seen)), options.constants)
+    lowest = 0.0 if options.nonnegative else -np.inf
+    cube = replace(cube, forecasts=np.maximum(cube.forecasts, lowest))
+    now = then.pattern(len(raw))
+    reasons = {name: then.reason(name, len(raw)) for name in methods}
     fits = [None if reasons[name] else fit(name, used, m, options.constants) for name in methods]
     members = np.array([np.full(horizon, np.nan) if f is None else f.forecast(horizon) for f in fits])
-    asked = np.array([options.asked_for(name) for name in methods])
+    members = np.maximum(members, lowest)
+    voices = options.voices(m)
+    asked = np.array([name in voices for name in methods])
     everywhere = np.isfinite(np.concatenate([cube.forecasts, members[:, None]], axis=1)).all(axis=2) & asked[:, None]
-    pool = everywhere & np.array([[not _kept_out(name, seen(int(k)), int(k) < 2 * m)
-                                     for k in (*known, len(raw))] for name in methods])
+    pool = everywhere & np.array([[not then.kept_out(name, int(k), options) for k in (*known, len(raw))]
+                                  for name in methods])
     # where the pattern leaves none of the methods asked for, any of them that runs is better than silence
     pool = np.where(pool.any(axis=0)[None, :], pool, everywhere)
     if not pool[:, -1].any():
@@ -182,10 +178,10 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
         series=series, raw=raw, used=used, periods=periods,
         findings=find(series, closing, nonnegative=options.nonnegative), pattern=now,
         differencing_words=difference(used, m).words,
-        reasons={name: text or _kept_out(name, now, len(raw) < 2 * m) for name, text in reasons.items()},
+        reasons={name: text or then.kept_out(name, len(raw), options) for name, text in reasons.items()},
         cube=cube, offsets=len(raw) - known, pool=pool,
         members=members, constants=tuple({} if f is None else dict(f.constants) for f in fits),
-        naive_scale=np.array([naive_error(known_then(int(k)), m) for k in (*known, len(raw))]),
+        naive_scale=np.array([naive_error(then.repaired(int(k)), m) for k in (*known, len(raw))]),
         mase_scale=mase_scale(used, m))
 
 
@@ -203,30 +199,48 @@ def naive_error(values: Array, season_length: int) -> float:
 
 def _known_counts(n: int, season_length: int, horizon: int) -> NDArray[np.int64]:
     """Numbers of periods known at each origin, ascending: at least two seasons, or half of a short history."""
-    least = max(3, min(2 * season_length + 1, n // 2))
+    least = max(3, min(max(2 * season_length + 1, FEWEST_KNOWN), n // 2))
     first = max(least, n - origin_count(season_length, horizon))
     return np.arange(first, n, dtype=np.int64)
 
 
-UNDAMPED = ("holt", "differenced_ses")
-"""Methods that carry a trend on without end."""
+class _Then:
+    """What a forecaster knew of one series when so many of its periods were known."""
 
+    def __init__(self, raw: Array, season_length: int, nonnegative: bool) -> None:
+        self.season_length = season_length
+        # every origin needs these several times: each is made once, from what was known then
+        self.repaired: Callable[[int], Array] = cache(
+            lambda known: repaired(raw[:known], season_length, nonnegative=nonnegative))
+        self.pattern: Callable[[int], Pattern] = cache(
+            lambda known: pattern(self.repaired(known), season_length, used=self.repaired(known)))
+        self.interval: Callable[[int], float] = cache(lambda known: average_demand_interval(self.repaired(known)))
 
-def _kept_out(method: str, seen: Pattern, young: bool) -> str:
-    """Why a method may not enter the blend or the choice, given the pattern seen at that origin; empty if it may.
+    def intermittent(self, known: int) -> bool:
+        """Whether demand was missing in so many periods that the demand-rate family speaks."""
+        return self.interval(known) >= ADI_LIMIT
 
-    While fewer than two seasons are known (`young`), what looks like a trend may be the
-    season, and is not carried on undamped.
-    """
-    entry = METHODS[method]
-    if entry.family == "benchmark":
-        return "is a benchmark, there to be beaten"
-    if seen.intermittent:
-        return "" if entry.family == "demand rate" else "is not for intermittent demand"
-    if entry.seasonal and not seen.season:
-        return "repeats a season, and this series shows none"
-    if seen.season and not entry.seasonal:
-        return "knows no season, and this series has one"
-    if young and method in UNDAMPED:
-        return "would carry a trend on that may be the season: fewer than two years are known"
-    return ""
+    def reason(self, method: str, known: int) -> str:
+        """Why the method may not be used at all; empty when it may."""
+        return ineligible_reason(METHODS[method].requirements, self.repaired(known), self.season_length,
+                                 self.interval(known))
+
+    def kept_out(self, method: str, known: int, options: ForecastOptions) -> str:
+        """Why a method may not enter the blend or the choice at that origin; empty if it may.
+
+        Methods asked for by name have to fit the season; the usual ones find out how much of
+        one there is, or earn their weight. While fewer than two seasons are known, what looks
+        like a trend may be the season, and is not carried on without end.
+        """
+        entry = METHODS[method]
+        if method not in options.voices(self.season_length):
+            return "is a benchmark, there to be beaten"
+        if self.intermittent(known):
+            return "" if entry.family == "demand rate" else "is not for intermittent demand"
+        if options.methods and entry.season == "repeated" and not self.pattern(known).season:
+            return "repeats a season, and this series shows none"
+        if options.methods and entry.season == "none" and self.pattern(known).season:
+            return "knows no season, and this series has one"
+        if known < 2 * self.season_length and entry.endless_trend:
+            return "would carry a trend on that may be the season: fewer than two years are known"
+        return ""

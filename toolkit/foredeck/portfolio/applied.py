@@ -7,6 +7,7 @@ Cheap: nothing is fitted here. The result is the part of a round's tables (see
 from __future__ import annotations
 
 import json
+from collections.abc import Mapping
 
 import numpy as np
 import pandas as pd
@@ -21,13 +22,15 @@ from foredeck.portfolio.ranges import scales
 from foredeck.smoothing.catalogue import METHODS
 
 Array = NDArray[np.float64]
+Places = NDArray[np.int64]
 
 
 def apply_fit(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> dict[str, pd.DataFrame]:
     """Tables of one series: `series`, `actuals`, `findings`, `eligibility`, `error_table`,
     `members`, `forecasts` and `reliability`.
     """
-    scale = scales(alone, procedure, fit.ratio, fit.nonnegative)
+    scale = scales(alone, procedure, fit.nonnegative)
+    leads = np.arange(fit.horizon)
     names = [period_name(p) for p in alone.periods]
     ahead = [period_name(alone.periods[-1] + lead) for lead in range(1, fit.horizon + 1)]
     return {
@@ -41,23 +44,23 @@ def apply_fit(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> dict[str
         "error_table": _error_table(alone),
         "members": _members(alone, procedure, ahead),
         "forecasts": pd.DataFrame({"series": alone.series.name, "period": ahead,
-                                   "lead": np.arange(1, fit.horizon + 1), "baseline": procedure.forecasts[-1],
-                                   **_limits(procedure.forecasts[-1], scale[-1], fit, 0)}),
+                                   "lead": leads + 1, "baseline": procedure.forecasts[-1],
+                                   **_limits(procedure.forecasts[-1], scale[-1], fit, np.zeros_like(leads), leads)}),
         "reliability": _reliability(alone, procedure, fit, scale, names),
     }
 
 
 def window_scale(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> Array:
     """Scales of the errors to come, shape (horizon,); what totals are made of."""
-    return np.asarray(scales(alone, procedure, fit.ratio, fit.nonnegative)[-1])
+    return np.asarray(scales(alone, procedure, fit.nonnegative)[-1])
 
 
-def _limits(forecast: Array, scale: Array, fit: PortfolioFit, offset: int) -> dict[str, Array]:
+def _limits(forecast: Array, scale: Array, fit: PortfolioFit, offset: Places, lead: Places) -> dict[str, Array]:
+    """Limits of forecasts made so many periods before the closing period, at 0-based leads; all of one shape."""
     columns = {}
     for at, level in enumerate(fit.levels):
-        lower, upper = fit.multipliers[offset, at]
-        columns[f"lower_{level}"] = forecast - lower * scale
-        columns[f"upper_{level}"] = forecast + upper * scale
+        columns[f"lower_{level}"] = forecast - fit.multipliers[offset, at, 0, lead] * scale
+        columns[f"upper_{level}"] = forecast + fit.multipliers[offset, at, 1, lead] * scale
     if fit.nonnegative:
         columns = {name: np.maximum(values, 0.0) for name, values in columns.items()}
     return columns
@@ -71,45 +74,37 @@ def _error_table(alone: Alone) -> pd.DataFrame:
 
 
 def _members(alone: Alone, procedure: Procedure, ahead: list[str]) -> pd.DataFrame:
-    rows = []
-    for at, method in enumerate(alone.cube.methods):
-        if np.isfinite(alone.members[at]).all():
-            rows.append(pd.DataFrame({
-                "series": alone.series.name, "method": method, "lead": np.arange(1, len(ahead) + 1), "period": ahead,
-                "forecast": alone.members[at], "weight": procedure.weights[-1, at],
-                "constants": json.dumps({k: round(float(v), 6) for k, v in alone.constants[at].items()})}))
-    return pd.concat(rows, ignore_index=True)
+    there = np.flatnonzero(np.isfinite(alone.members).all(axis=1))
+    horizon = len(ahead)
+    constants = [json.dumps({k: round(float(v), 6) for k, v in held.items()}) for held in alone.constants]
+    return pd.DataFrame({
+        "series": alone.series.name,
+        "method": np.repeat(np.array(alone.cube.methods, dtype=object)[there], horizon),
+        "lead": np.tile(np.arange(1, horizon + 1), len(there)), "period": ahead * len(there),
+        "forecast": alone.members[there].ravel(), "weight": np.repeat(procedure.weights[-1, there], horizon),
+        "constants": np.repeat(np.array(constants, dtype=object)[there], horizon)})
 
 
 def _reliability(alone: Alone, procedure: Procedure, fit: PortfolioFit, scale: Array,
                  names: list[str]) -> pd.DataFrame:
     """The procedure's past forecasts with the ranges it would have given, beside the actual and the seasonal naive."""
-    horizon, rows = fit.horizon, []
     seasonal, naive = (alone.cube.forecasts[alone.cube.methods.index(name)] for name in ("seasonal_naive", "naive"))
     benchmark = np.where(np.isfinite(seasonal), seasonal, naive)
-    for o, (known, offset) in enumerate(zip(alone.cube.known, alone.offsets, strict=True)):
-        leads = np.flatnonzero(np.isfinite(alone.cube.actual[o]) & np.isfinite(procedure.forecasts[o]))
-        if not len(leads):
-            continue
-        limits = _limits(procedure.forecasts[o], scale[o], fit, int(offset))
-        rows.append(pd.DataFrame({
-            "origin": names[known - 1], "period": [names[known + lead] for lead in leads], "lead": leads + 1,
-            "forecast": procedure.forecasts[o, leads], "actual": alone.cube.actual[o, leads],
-            **{name: values[leads] for name, values in limits.items()}, "benchmark": benchmark[o, leads]}))
-    if not rows:
-        limits = _limits(scale[-1], scale[-1], fit, 0)
-        columns = ["origin", "period", "lead", "forecast", "actual", *limits, "benchmark"]
-        table = pd.DataFrame({c: pd.Series(dtype=str if c in ("origin", "period") else float) for c in columns})
-    else:
-        table = pd.concat(rows, ignore_index=True)
-    table.insert(0, "series", alone.series.name)
-    table["lead"] = table["lead"].astype("int64")
-    return table[table["lead"] <= horizon]
+    forecasts, actual = procedure.forecasts[:-1], alone.cube.actual
+    origin, lead = np.nonzero(np.isfinite(actual) & np.isfinite(forecasts))
+    known = alone.cube.known[origin]
+    named = np.array(names, dtype=object)
+    limits = _limits(forecasts[origin, lead], scale[origin, lead], fit, alone.offsets[origin], lead)
+    return pd.DataFrame({
+        "series": alone.series.name, "origin": named[known - 1], "period": named[known + lead],
+        "lead": lead.astype(np.int64) + 1, "forecast": forecasts[origin, lead], "actual": actual[origin, lead],
+        **limits, "benchmark": benchmark[origin, lead]})
 
 
 def _series_row(alone: Alone, procedure: Procedure, names: list[str]) -> pd.DataFrame:
     series, seen = alone.series, alone.pattern
-    used = [m for m, w in zip(alone.cube.methods, procedure.weights[-1], strict=True) if w > 0]
+    weights = dict(zip(alone.cube.methods, procedure.weights[-1].tolist(), strict=True))
+    used = {name: weight for name, weight in weights.items() if weight > 0}
     return pd.DataFrame([{
         "series": series.name, **dict(series.groups), "unit": series.unit, "unit_value": series.unit_value,
         "status": "forecast", "reason": "", "first_period": names[0],
@@ -117,13 +112,18 @@ def _series_row(alone: Alone, procedure: Procedure, names: list[str]) -> pd.Data
         "n_periods": int(np.isfinite(alone.raw).sum()), "trend_strength": seen.trend_strength,
         "season_strength": seen.season_strength, "adi": seen.adi, "cv2": seen.cv2,
         "demand_class": seen.demand_class, "pattern_words": seen.words,
-        "differencing_words": alone.differencing_words, "method": used[0] if len(used) == 1 else "blend",
+        "differencing_words": alone.differencing_words, "method": next(iter(used)) if len(used) == 1 else "blend",
         "method_words": method_words(used), "mase_scale": alone.mase_scale}])
 
 
-def method_words(used: list[str]) -> str:
-    """The method in plain words: one sentence for one method, a list for a blend."""
+def method_words(used: Mapping[str, float]) -> str:
+    """The method in plain words: one sentence for one method, the leaders for a blend."""
     if len(used) == 1:
-        return METHODS[used[0]].sentence
-    titles = [METHODS[name].title for name in used]
-    return f"The forecast is the plain mean of {len(titles)} methods: {'; '.join(titles)}."
+        return METHODS[next(iter(used))].sentence
+    ranked = sorted(used, key=lambda name: -used[name])
+    if max(used.values()) - min(used.values()) < 1e-9:
+        return (f"The forecast is the plain mean of {len(used)} methods: "
+                f"{'; '.join(METHODS[name].title for name in used)}.")
+    leaders = ", ".join(f"{METHODS[name].title} ({100 * used[name]:.0f} %)" for name in ranked[:3])
+    return (f"The forecast is a blend of {len(used)} methods, led by {leaders}. "
+            f"{METHODS[ranked[0]].title}: {METHODS[ranked[0]].sentence[0].lower()}{METHODS[ranked[0]].sentence[1:]}")

@@ -38,7 +38,7 @@ def study(series: SeriesHistory | pd.Series[Any], horizon: int | None = None, *,
         Per cent of the ranges.
     style : {"blend", "single"}
     methods : iterable of str
-        Names from the catalogue; all when empty.
+        Names from the catalogue; the usual ones when empty. With a portfolio fit, those of the fit.
     constants : mapping, optional
         Fixed smoothing constants, for example {"alpha": 0.2}; estimated where not given.
     nonnegative : bool
@@ -60,14 +60,14 @@ def study(series: SeriesHistory | pd.Series[Any], horizon: int | None = None, *,
         options = ForecastOptions(horizon or USUAL_HORIZON[history.season_length], tuple(levels), style,
                                   tuple(methods), constants, nonnegative)
     else:
-        options = ForecastOptions(fit.horizon, fit.levels, fit.style, tuple(methods), constants, fit.nonnegative)
+        options = ForecastOptions(fit.horizon, fit.levels, fit.style, fit.asked, constants, fit.nonnegative)
     closing = history.periods[-1] if closing is None else closing
     alone = examine(history, closing, options)
-    procedure = live_through(alone, options.style)
     if fit is None:
-        fit, standardised = fit_portfolio([alone], [procedure], options)
+        fit, (procedure,), standardised = fit_portfolio([alone], options)
     else:
-        standardised = standardised_errors([alone], [procedure], fit.ratio, fit.nonnegative)
+        procedure = live_through(alone, fit.style, fit.learned)
+        standardised = standardised_errors([alone], [procedure], len(fit.multipliers) - 1, fit.nonnegative)
     tables = apply_fit(alone, procedure, fit)
     tables["adjusted"] = unadjusted(tables["forecasts"])
     tables["totals"] = totals_table([alone], [procedure], fit, standardised, tables["adjusted"], (), {"next 3": 3},

@@ -19,56 +19,46 @@ from foredeck.portfolio.procedure import Procedure
 
 Array = NDArray[np.float64]
 
-OWN_SHARE = 2 / 3
+OWN_SHARE = 1 / 2
 """Most that a series' own backtest errors count in its scale; the rest is its naive error, which is
 steadier."""
+
+SIZE_POWER = 1 / 2
+"""Periods that sell more also miss by more, though less than in proportion."""
+
+DISAGREEMENT_POWER = 1 / 5
+"""Where the methods disagree, all of them miss by more."""
+
+HALF_LIFE = 6.0
+"""An error counts half as much as one that became known so many periods later: the latest misses tell most of
+the next ones."""
 
 MIN_ORIGINS = 4
 """A lead gets no range from fewer origins than this; the nearest shorter lead's is widened instead."""
 
 
-def scales(alone: Alone, procedure: Procedure, ratio: Array, nonnegative: bool) -> Array:
+def scales(alone: Alone, procedure: Procedure, nonnegative: bool) -> Array:
     """Scale of the error at each origin and now, per lead.
 
-    Parameters
-    ----------
-    ratio : array, shape (largest offset + 1,)
-        Portfolio ratio of own error to naive error as known at each offset from the closing period.
+    The geometric mean of the series' own errors, as far as they are known, and its naive error;
+    where no own error is known the naive error alone, which is the larger. More where the
+    methods disagree and, for values that cannot fall below zero, in periods that sell more.
 
     Returns
     -------
     array, shape (origins + 1, horizon); the series' unit, positive
     """
-    offsets = np.append(alone.offsets, 0)
-    naive = alone.naive_scale * ratio[offsets]
+    naive = alone.naive_scale
     count = procedure.own_count
     share = OWN_SHARE * count / (count + 4.0)
     # a run of perfect forecasts must not claim that errors are impossible
     own = np.maximum(np.where(count > 0, procedure.own_error, naive), 0.02 * naive)
     scale = np.exp(share * np.log(own) + (1 - share) * np.log(naive))
+    apart = np.maximum(procedure.disagreement / alone.naive_scale[:, None], 0.02) ** DISAGREEMENT_POWER
     if not nonnegative:
-        return np.repeat(scale[:, None], procedure.forecasts.shape[1], axis=1)
-    # months that sell more also miss by more, though less than in proportion
+        return np.asarray(scale[:, None] * apart, dtype=np.float64)
     size = np.clip(np.nan_to_num(procedure.forecasts, nan=1.0) / procedure.level[:, None], 0.1, 10.0)
-    return np.asarray(scale[:, None] * np.sqrt(size), dtype=np.float64)
-
-
-def error_ratio(alones: list[Alone], procedures: list[Procedure], largest: int) -> Array:
-    """Median over the series of own error to naive error, as known at each offset.
-
-    Returns
-    -------
-    array, shape (largest + 1,); 1 where no series has three errors yet
-    """
-    table = np.full((len(alones), largest + 1), np.nan)
-    for row, alone, procedure in zip(table, alones, procedures, strict=True):
-        enough = procedure.own_count >= 3
-        offsets = np.append(alone.offsets, 0)[enough]
-        row[offsets] = (procedure.own_error / alone.naive_scale)[enough]
-    result = np.ones(largest + 1)
-    filled = np.isfinite(table).any(axis=0)
-    result[filled] = np.nanmedian(table[:, filled], axis=0)
-    return np.maximum(result, 0.05)
+    return np.asarray(scale[:, None] * apart * size**SIZE_POWER, dtype=np.float64)
 
 
 def multipliers(standardised: Array, levels: tuple[int, ...]) -> Array:
@@ -94,10 +84,11 @@ def multipliers(standardised: Array, levels: tuple[int, ...]) -> Array:
     for offset in range(width):
         together = _together(standardised, offset)
         for lead in range(horizon):
-            pooled, origins = _known(standardised, offset, lead)
-            if origins >= MIN_ORIGINS:
-                out[offset, :, :, lead] = _both_sides(pooled, shares)
-                independent[offset, lead] = origins * together
+            pooled, weight, origins = _known(standardised, offset, lead)
+            if len(origins) >= MIN_ORIGINS:
+                out[offset, :, :, lead] = both_sides(pooled, weight, shares)
+                # origins that count less are fewer origins (Kish 1965, Survey Sampling, section 11.7)
+                independent[offset, lead] = together * origins.sum() ** 2 / (origins**2).sum()
     middle = (1 + shares)[:, None, None] / 2
     widen = stats.t.ppf(middle, np.maximum(independent, 2.0)) / stats.norm.ppf(middle)
     out *= np.moveaxis(widen, 0, 1)[:, :, None, :]
@@ -117,18 +108,30 @@ def _without_errors(levels: tuple[int, ...]) -> Array:
     return np.repeat(one[:, None], 2, axis=1)
 
 
-def _known(standardised: Array, offset: int, lead: int) -> tuple[Array, int]:
-    """Errors at a lead, its neighbours included, that were known `offset` periods before the closing."""
-    pooled, origins = [], 0
+def age_weights(ages: Array) -> Array:
+    """How much errors count that became known so many periods before the origin."""
+    return np.asarray(0.5 ** (ages / HALF_LIFE))
+
+
+def _known(standardised: Array, offset: int, lead: int) -> tuple[Array, Array, Array]:
+    """Errors at a lead, its neighbours included, that were known `offset` periods before the closing.
+
+    Returns
+    -------
+    errors, how much each counts, and how much each origin of the lead itself counts
+    """
+    pooled, weights, origins = [], [], np.zeros(0)
     for near in (lead - 1, lead, lead + 1):
         if not 0 <= near < standardised.shape[2]:
             continue
         cells = standardised[:, offset + near + 1:, near]
-        cells = cells[:, np.isfinite(cells).any(axis=0)]
+        there = np.isfinite(cells)
+        counts = np.broadcast_to(age_weights(np.arange(float(cells.shape[1]))), cells.shape)
         if near == lead:
-            origins = cells.shape[1]
-        pooled.append(cells[np.isfinite(cells)])
-    return np.concatenate(pooled), origins
+            origins = counts[0][there.any(axis=0)]
+        pooled.append(cells[there])
+        weights.append(counts[there])
+    return np.concatenate(pooled), np.concatenate(weights), origins
 
 
 def _together(standardised: Array, offset: int) -> float:
@@ -157,8 +160,24 @@ def mean_correlation(rows: Array) -> float:
     return float(np.clip(((unit.sum(axis=0) ** 2).mean() - n) / (n * (n - 1)), 0.0, 1.0))
 
 
-def _both_sides(pooled: Array, shares: Array) -> Array:
+def both_sides(pooled: Array, weight: Array, shares: Array) -> Array:
     """Mean of symmetric and asymmetric quantiles, shape (levels, 2): lower and upper, both positive."""
-    symmetric = np.quantile(np.abs(pooled), shares)
-    lower, upper = np.quantile(pooled, np.array([(1 - shares) / 2, (1 + shares) / 2]))
+    symmetric = weighted_quantiles(np.abs(pooled), weight, shares)
+    lower, upper = (weighted_quantiles(pooled, weight, at) for at in ((1 - shares) / 2, (1 + shares) / 2))
     return np.maximum(np.stack([symmetric - lower, symmetric + upper], axis=1) / 2, 0.0)
+
+
+def weighted_quantiles(values: Array, weight: Array, shares: Array) -> Array:
+    """Quantiles of values that count unequally; with equal weights those of Hyndman & Fan (1996), type 7.
+
+    Parameters
+    ----------
+    values, weight : array, shape (n,), at least one; weights positive
+    shares : array, 0 to 1
+    """
+    order = np.argsort(values, kind="stable")
+    sorted_values, counts = values[order], weight[order]
+    if len(values) == 1:
+        return np.full(len(shares), sorted_values[0])
+    reached = np.cumsum(counts) - counts
+    return np.asarray(np.interp(shares, reached / reached[-1], sorted_values))

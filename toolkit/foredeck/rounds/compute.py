@@ -14,10 +14,10 @@ from foredeck.checks.findings import find
 from foredeck.errors import ForedeckError, IntakeError, SettingsError
 from foredeck.intake.history import History
 from foredeck.periods import FinancialYear, period_name
-from foredeck.portfolio.alone import Alone, ForecastOptions, examine, not_forecastable
+from foredeck.portfolio.alone import Alone, ForecastOptions, not_forecastable
 from foredeck.portfolio.applied import apply_fit
 from foredeck.portfolio.fit import fit_portfolio
-from foredeck.portfolio.procedure import live_through
+from foredeck.portfolio.spread import examine_each
 from foredeck.portfolio.totals import totals_table
 from foredeck.review.adjustment_file import read_adjustments
 from foredeck.review.adjustments import apply_adjustments
@@ -60,14 +60,13 @@ def compute_round(history: History, closing: pd.Period, settings: Settings, prog
     """
     _refuse_taken_names(history.group_columns)
     options = forecast_options(settings)
-    options.allowed()  # a wrong method name is the settings' fault, not a series'
+    options.allowed(history.frequency.season_length)  # a wrong method name is the settings' fault, not a series'
     known = history.up_to(closing)
     alones, parts, failures = _pass_one(known, closing, options, progress)
     if not alones:
         raise IntakeError("not one series can be forecast", where=str(settings.source.file),
                           do="; ".join(f"{f['series']}: {f['reason']}" for f in failures[:3]))
-    procedures = [live_through(alone, options.style) for alone in alones]
-    fit, standardised = fit_portfolio(alones, procedures, options)
+    fit, procedures, standardised = fit_portfolio(alones, options)
     progress("portfolio fit", 1, 1)
     parts += [apply_fit(alone, procedure, fit) for alone, procedure in zip(alones, procedures, strict=True)]
     tables = {name: _joined(parts, name, known.names) for name in
@@ -138,18 +137,18 @@ def _refuse_taken_names(groups: list[str]) -> None:
 def _pass_one(known: History, closing: pd.Period, options: ForecastOptions,
               progress: Progress) -> tuple[list[Alone], list[dict[str, pd.DataFrame]], list[dict[str, str]]]:
     alones, parts, failures = [], [], []
-    for done, name in enumerate(known.names):
-        series = known[name]
-        try:
-            alones.append(examine(series, closing, options))
-        except Exception as error:  # one series' fault must not stop the round
+    each = [known[name] for name in known.names]
+    for done, (series, found) in enumerate(zip(each, examine_each(each, closing, options), strict=True)):
+        if isinstance(found, Alone):
+            alones.append(found)
+        else:
             reason = not_forecastable(series, closing)
-            status = "not forecast" if reason or isinstance(error, ForedeckError) else "failed"
+            status = "not forecast" if reason or isinstance(found, ForedeckError) else "failed"
             if not reason:
-                reason = error.data.get("reason", error.what) if isinstance(error, ForedeckError) \
-                    else f"{type(error).__name__}: {error}"
-            failures.append({"series": name, "reason": reason, "status": status})
-            parts.append(_unforecast(known, name, closing, status, reason))
+                reason = found.data.get("reason", found.what) if isinstance(found, ForedeckError) \
+                    else f"{type(found).__name__}: {found}"
+            failures.append({"series": series.name, "reason": reason, "status": status})
+            parts.append(_unforecast(known, series.name, closing, status, reason))
         progress("series", done + 1, len(known))
     return alones, parts, failures
 

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from foredeck.errors import MethodError
 from foredeck.smoothing.fitted import Fitted, from_forecasts
+from foredeck.smoothing.seasonal_indices import fit_adjusted
 
 Array = NDArray[np.float64]
 
@@ -71,6 +72,15 @@ def fit_drift(values: Array, season_length: int) -> Fitted:
         path=partial(_line, level=float(values[-1]), slope=slope), spread=partial(_drifting, n=n),
         final={"level": float(values[-1]), "trend": slope}, n_parameters=1,
     )
+
+
+def fit_drift_with_season(values: Array, season_length: int) -> Fitted:
+    """Extend the line from the first value to the last of the seasonally adjusted values, season put back."""
+
+    def drift(adjusted: Array, _season_length: int, _constants: object = None) -> Fitted:
+        return fit_drift(adjusted, 1)
+
+    return fit_adjusted(drift, values, season_length, method="drift_with_season", title="Drift with season")
 
 
 def default_window(season_length: int) -> int:

@@ -3,205 +3,35 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass
-from functools import partial
+from collections.abc import Mapping
 from types import MappingProxyType
-from typing import Any, Literal
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from foredeck.checks.eligibility import Requirements
-from foredeck.compiled.recursions import ADDITIVE, MULTIPLICATIVE
 from foredeck.errors import MethodError
-from foredeck.smoothing import benchmarks, demand_rate
-from foredeck.smoothing.differenced import fit_differenced
+from foredeck.smoothing.entries import ENTRIES
 from foredeck.smoothing.fitted import Fitted
-from foredeck.smoothing.state_space import Form, fit_form
+from foredeck.smoothing.method import Method
 from foredeck.smoothing.values import AnySeries, bare_values
 
 Array = NDArray[np.float64]
-Family = Literal["smoothing", "benchmark", "demand rate"]
 
-
-@dataclass(frozen=True)
-class Method:
-    """One way to forecast.
-
-    Attributes
-    ----------
-    name, title : str
-        Name in settings and tables, and name for readers.
-    sentence : str
-        The method in plain words, for reports.
-    requirements : Requirements
-        What it needs of a series.
-    fit : callable
-        `(values, season_length, constants, **options) -> Fitted`; `fit` of this module
-        checks what it is given.
-    source : str
-        Publication.
-    seasonal : bool
-        True when the forecast repeats a season.
-    constants : tuple of str
-        Constants that may be fixed.
-    options : tuple of str
-        Further arguments it takes (`initial`, `season_update`).
-    family : {"smoothing", "benchmark", "demand rate"}
-    """
-
-    name: str
-    title: str
-    sentence: str
-    requirements: Requirements
-    fit: Callable[..., Fitted]
-    source: str
-    seasonal: bool
-    constants: tuple[str, ...]
-    options: tuple[str, ...]
-    family: Family
-
-
-def _form(form: Form, requirements: Requirements, source: str, sentence: str) -> Method:
-    seasonal = form.season in (ADDITIVE, MULTIPLICATIVE)
-    return Method(
-        form.name, form.title, sentence, requirements, partial(fit_form, form), source, seasonal,
-        form.constants, ("initial", "season_update") if seasonal else ("initial",), "smoothing",
-    )
-
-
-def _changes(name: str, title: str, requirements: Requirements, seasonal: bool, sentence: str) -> Method:
-    def fit_changes(values: Array, m: int, constants: Mapping[str, float], **options: Any) -> Fitted:
-        return fit_differenced(name, title, values, m, m if seasonal else 1, constants, **options)
-
-    source = "Box & Jenkins (1970); Holt (1957)"
-    return Method(
-        name, title, sentence, requirements, fit_changes, source, seasonal, ("alpha",), ("initial",),
-        "smoothing",
-    )
-
-
-def _benchmark(
-    name: str, title: str, requirements: Requirements, fit_one: Callable[..., Fitted], sentence: str,
-    seasonal: bool = False, constants: tuple[str, ...] = (),
-) -> Method:
-    def fit_benchmark(values: Array, m: int, constants: Mapping[str, float]) -> Fitted:
-        return fit_one(values, m, **constants)
-
-    source = "Hyndman & Athanasopoulos (2018), section 3.1"
-    return Method(
-        name, title, sentence, requirements, fit_benchmark, source, seasonal, constants, (), "benchmark"
-    )
-
-
-def _rate(
-    name: str, title: str, fit_one: Callable[..., Fitted], source: str, constants: tuple[str, ...],
-    sentence: str,
-) -> Method:
-    only = Requirements(4, intermittent="only")
-    return Method(name, title, sentence, only, fit_one, source, False, constants, (), "demand rate")
-
-
-_SEASONAL = Requirements(8, min_seasons=2, intermittent="never")
-_POSITIVE = Requirements(8, min_seasons=2, positive=True, intermittent="never")
-_WINTERS = "Holt (1957); Winters (1960)"
-_DAMPED = "Gardner & McKenzie (1985); Winters (1960)"
-
-_ENTRIES = (
-    _benchmark(
-        "naive", "Last value (naive)", Requirements(1), benchmarks.fit_naive,
-        "The forecast is the last known value.",
-    ),
-    _benchmark(
-        "seasonal_naive", "Same season last year (seasonal naive)", Requirements(1, min_seasons=1),
-        benchmarks.fit_seasonal_naive, "The forecast is the value of the same season a year before.",
-        seasonal=True,
-    ),
-    _benchmark(
-        "mean", "Mean of all periods", Requirements(1), benchmarks.fit_mean,
-        "The forecast is the mean of all known periods.",
-    ),
-    _benchmark(
-        "moving_average", "Moving average", Requirements(3), benchmarks.fit_moving_average,
-        "The forecast is the mean of the latest periods.", constants=("window",),
-    ),
-    _benchmark(
-        "drift", "Last value with drift", Requirements(3), benchmarks.fit_drift,
-        "The forecast goes on from the last value by the average change since the first.",
-    ),
-    _form(
-        Form("ses", "Simple exponential smoothing"), Requirements(3, intermittent="never"),
-        "Brown (1959); Holt (1957)",
-        "The forecast is a weighted mean of past periods in which recent ones weigh most; it is the same "
-        "for all periods ahead.",
-    ),
-    _changes(
-        "differenced_ses", "Smoothed changes", Requirements(4, intermittent="never"), False,
-        "The changes from period to period are smoothed, and the forecast goes on from the last value by "
-        "the smoothed change.",
-    ),
-    _changes(
-        "seasonally_differenced_ses", "Smoothed changes on last year",
-        Requirements(4, min_seasons=1.5, intermittent="never"), True,
-        "The changes on the same season of the year before are smoothed, and the smoothed change is added "
-        "to last year's values.",
-    ),
-    _form(
-        Form("holt", "Holt's linear trend", trend=True), Requirements(5, intermittent="never"), "Holt (1957)",
-        "A level and a trend are smoothed, and the forecast goes on along the latest trend.",
-    ),
-    _form(
-        Form("damped_holt", "Damped trend", trend=True, damped=True), Requirements(6, intermittent="never"),
-        "Gardner & McKenzie (1985)",
-        "A level and a trend are smoothed, and the forecast follows the latest trend less and less.",
-    ),
-    _form(
-        Form("holt_winters_additive", "Holt-Winters, additive season", trend=True, season=ADDITIVE),
-        _SEASONAL, _WINTERS,
-        "Level, trend and season are smoothed; each season adds or takes away about the same amount "
-        "every year.",
-    ),
-    _form(
-        Form("damped_holt_winters_additive", "Damped Holt-Winters, additive season", True, True, ADDITIVE),
-        _SEASONAL, _DAMPED,
-        "Level, a trend that fades out, and season are smoothed; each season adds or takes away about the "
-        "same amount every year.",
-    ),
-    _form(
-        Form("holt_winters_multiplicative", "Holt-Winters, multiplicative season", True, False,
-             MULTIPLICATIVE),
-        _POSITIVE, _WINTERS,
-        "Level, trend and season are smoothed; each season is about the same percentage above or below "
-        "every year.",
-    ),
-    _form(
-        Form("damped_holt_winters_multiplicative", "Damped Holt-Winters, multiplicative season", True, True,
-             MULTIPLICATIVE),
-        _POSITIVE, _DAMPED,
-        "Level, a trend that fades out, and season are smoothed; each season is about the same percentage "
-        "above or below every year.",
-    ),
-    _rate(
-        "croston", "Croston", demand_rate.fit_croston, "Croston (1972)", ("alpha",),
-        "The usual size of a demand is divided by the usual gap between demands.",
-    ),
-    _rate(
-        "sba", "Syntetos-Boylan approximation", partial(demand_rate.fit_croston, corrected=True),
-        "Syntetos & Boylan (2005)", ("alpha",),
-        "The usual size of a demand is divided by the usual gap between demands, less a correction for the "
-        "known bias of that ratio.",
-    ),
-    _rate(
-        "tsb", "Teunter-Syntetos-Babai", demand_rate.fit_tsb, "Teunter, Syntetos & Babai (2011)",
-        ("alpha", "beta"),
-        "The usual size of a demand is multiplied by the current chance of one, which falls while no demand "
-        "comes.",
-    ),
-)
-
-METHODS: Mapping[str, Method] = MappingProxyType({entry.name: entry for entry in _ENTRIES})
+METHODS: Mapping[str, Method] = MappingProxyType({entry.name: entry for entry in ENTRIES})
 """Every method by name, simple before elaborate: near-ties of a backtest go to the earlier one."""
+
+
+def usual_methods(season_length: int) -> tuple[str, ...]:
+    """Names of the methods that speak in a forecast when none are asked for.
+
+    Five members that count the same to begin with, two benchmarks that may earn a voice,
+    and the demand-rate family for intermittent series. A temporal hierarchy helps monthly
+    series and hurts quarterly ones: there its lowest level, the weighted forms, stands.
+    """
+    forms = "temporal_hierarchy" if season_length == 12 else "weighted_forms"
+    return ("seasonal_naive", "drift_with_season", "log_theta", "dynamic_theta", "log_dynamic_theta",
+            "averaged_damped", forms, "croston", "sba", "tsb")
 
 
 def named(name: str) -> Method:
