@@ -12,6 +12,7 @@ from __future__ import annotations
 
 import hashlib
 import os
+import shutil
 import sys
 import tempfile
 from collections.abc import Callable, Iterator
@@ -27,6 +28,8 @@ try:
     import fcntl
 except ImportError:  # Windows: two processes may then compile the same; the files stay whole, numba renames them in
     fcntl = None  # type: ignore[assignment]
+
+_BESIDE = Path(__file__).parent / "__pycache__"
 
 Kernel = TypeVar("Kernel", bound=Callable[..., Any])
 
@@ -55,7 +58,7 @@ def cache_folder() -> Path | None:
     In order: `NUMBA_CACHE_DIR` where it is set; `__pycache__` beside the modules; the
     user's cache; a folder of this user's own, closed to others, among the temporary files.
     """
-    name = f"compiled-{_fingerprint()}"
+    name = f"compiled-{sys.implementation.cache_tag}-{_fingerprint()}"
     for place in _places():
         folder = place / name
         try:
@@ -63,15 +66,24 @@ def cache_folder() -> Path | None:
             tempfile.TemporaryFile(dir=folder).close()
         except OSError:
             continue
+        if place == _BESIDE:
+            _clear(folder)
         return folder
     return None
+
+
+def _clear(folder: Path) -> None:
+    """Remove what earlier versions of these very files left beside them."""
+    for other in folder.parent.glob(f"compiled-{sys.implementation.cache_tag}-*"):
+        if other != folder:
+            shutil.rmtree(other, ignore_errors=True)
 
 
 def _places() -> Iterator[Path]:
     given = os.environ.get("NUMBA_CACHE_DIR")
     if given:
         yield Path(given) / "foredeck"
-    yield Path(__file__).parent / "__pycache__"
+    yield _BESIDE
     with suppress(RuntimeError):  # an account without a home
         yield Path(os.environ.get("XDG_CACHE_HOME") or Path.home() / ".cache") / "foredeck"
     own = _own_temporary()

@@ -53,7 +53,8 @@ def run(
     alpha, beta, gamma, phi = constants[0], constants[1], constants[2], constants[3]
     slope = alpha * beta
     reach = alpha + phi * slope
-    share = gamma * (1.0 - alpha) if new_level else gamma
+    lift = alpha if new_level else 0.0
+    share = gamma * (1.0 - lift)
     level, trend = state[0], state[1]
     damped = phi * trend
     expected = level + damped
@@ -68,7 +69,7 @@ def run(
             forecast = expected * index
             miss = y[t] - forecast
             pull = y[t] / index - expected
-            reference = expected + alpha * pull if new_level else expected
+            reference = expected + lift * pull
             # A level that has fallen to zero says nothing about the season: the index stays as it is.
             if reference > 0.0:
                 state[place] = index + gamma * (y[t] / reference - index)
@@ -123,7 +124,8 @@ def run_back(
     """
     alpha, beta, gamma, phi = constants[0], constants[1], constants[2], constants[3]
     slope = alpha * beta
-    share = gamma * (1.0 - alpha) if new_level else gamma
+    lift, lifted = (alpha, 1.0) if new_level else (0.0, 0.0)
+    share = gamma * (1.0 - lift)
     by_alpha, by_beta, by_gamma, by_share, by_phi, by_level, by_trend = 0.0, 0.0, 0.0, 0.0, 0.0, 0.0, 0.0
     gradient[6:] = 0.0
     n = y.size
@@ -142,15 +144,13 @@ def run_back(
             index, by_index = trace[2, t], gradient[place]
             scaled = y[t] / index
             pull = scaled - expected
-            reference = expected + alpha * pull if new_level else expected
+            reference = expected + lift * pull
             ratio = y[t] / reference
             by_gamma += by_index * (ratio - index)
             by_reference = -gamma * by_index * ratio / reference
-            if new_level:
-                by_step += by_reference
-                by_reference *= 1.0 - alpha
+            by_step += lifted * by_reference
             gradient[place] = (1.0 - gamma) * by_index + by_forecast * expected - alpha * by_step * scaled / index
-            kept += by_forecast * index + by_reference
+            kept += by_forecast * index + (1.0 - lift) * by_reference
         elif season == ADDITIVE:
             by_index = gradient[place]
             by_share += by_index * miss
@@ -170,9 +170,8 @@ def run_back(
         if place == 5:
             place = m + 5
     by_beta *= alpha
-    if new_level:
-        by_alpha -= by_share * gamma
-        by_share *= 1.0 - alpha
+    by_alpha -= lifted * by_share * gamma
+    by_share *= 1.0 - lift
     gradient[0], gradient[1], gradient[2], gradient[3] = by_alpha, by_beta, by_gamma + by_share, by_phi
     gradient[4], gradient[5] = by_level, by_trend
 

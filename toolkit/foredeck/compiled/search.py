@@ -310,6 +310,8 @@ def descend(
             move[i] = -move[i]
             fall += move[i] * gradient[i]
             longest = max(longest, abs(move[i]))
+        if not fresh and -fall < tolerance:  # the gain promised is half of this
+            break
         reached = np.inf
         if fall < 0.0:
             reached, total_there = line_search(task, room, point, move, value, fall, longest, trial)
