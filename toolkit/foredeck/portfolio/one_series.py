@@ -13,6 +13,7 @@ from foredeck.intake.history import SeriesHistory
 from foredeck.periods import FinancialYear, frequency_of, period_name
 from foredeck.portfolio.alone import ForecastOptions, examine
 from foredeck.portfolio.applied import apply_fit
+from foredeck.portfolio.coverage import achieved_coverage
 from foredeck.portfolio.fit import PortfolioFit, fit_portfolio, standardised_errors
 from foredeck.portfolio.procedure import live_through
 from foredeck.portfolio.totals import totals_table
@@ -75,6 +76,8 @@ def study(series: SeriesHistory | pd.Series[Any], horizon: int | None = None, *,
     tables["adjustments"] = empty_table("adjustments")
     tables["comparisons"] = empty_table("comparisons")
     stored = {**fit.to_dict(), "frequency": history.frequency.value}
+    if portfolio_fit is None:
+        stored["coverage"] = achieved_coverage(tables["reliability"], fit.levels)
     return Study.from_tables(history.name, tables, round="", state="study", closing=period_name(closing),
                              portfolio=stored, made={"made_at": "", "versions": versions()})
 

@@ -16,6 +16,7 @@ from foredeck.intake.history import History
 from foredeck.periods import FinancialYear, period_name
 from foredeck.portfolio.alone import Alone, ForecastOptions, not_forecastable
 from foredeck.portfolio.applied import apply_fit
+from foredeck.portfolio.coverage import achieved_coverage
 from foredeck.portfolio.fit import fit_portfolio
 from foredeck.portfolio.spread import examine_each
 from foredeck.portfolio.totals import totals_table
@@ -106,19 +107,6 @@ def data_fingerprint(history: History, closing: pd.Period, settings: Settings) -
 def made_with(history: History) -> dict[str, Any]:
     """What the page tells about how it was made, beside fingerprints."""
     return {"versions": versions(), "source": history.understood.lines()}
-
-
-def achieved_coverage(reliability: pd.DataFrame, levels: tuple[int, ...]) -> dict[str, Any]:
-    """Share of past actuals inside the ranges that the procedure gave, by level, lead and origin."""
-    found: dict[str, Any] = {}
-    for level in levels:
-        judged = reliability[reliability[f"lower_{level}"].notna()]
-        inside = (judged["actual"] >= judged[f"lower_{level}"]) & (judged["actual"] <= judged[f"upper_{level}"])
-        found[str(level)] = {
-            "all": float(inside.mean()), "n": len(judged),
-            "lead": {int(k): float(v) for k, v in inside.groupby(judged["lead"]).mean().items()},  # type: ignore[call-overload]
-            "origin": {str(k): float(v) for k, v in inside.groupby(judged["origin"]).mean().items()}}
-    return found
 
 
 SERIES_COLUMNS = ("series", "unit", "unit_value", "status", "reason", "first_period", "last_period", "n_periods",
