@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 from scipy.optimize import minimize
+from scipy.special import logsumexp, softmax
 
 from foredeck.backtests.measures import mean_of
 from foredeck.portfolio.alone import Alone, ForecastOptions, origin_count
@@ -153,21 +154,16 @@ def learn(errors: Array, cell_weight: Array, prior: Array) -> Array:
     """
 
     def miss(coordinates: Array) -> tuple[float, Array]:
-        weights = softmax(coordinates)
+        logs = coordinates - logsumexp(coordinates)
+        weights = np.exp(logs)
         blend = errors @ weights
         size = np.sqrt(blend * blend + _SOFT * _SOFT)
         slope = (cell_weight * blend / size) @ errors
-        away = PULL * float(prior @ np.log(prior / weights))
+        away = PULL * float(prior @ (np.log(prior) - logs))
         return float(cell_weight @ size) + away, weights * (slope - weights @ slope) + PULL * (weights - prior)
 
     found = minimize(miss, np.log(prior), jac=True, method="L-BFGS-B", options={"ftol": 1e-7})
-    return softmax(found.x)
-
-
-def softmax(coordinates: Array) -> Array:
-    """Positive numbers summing to 1, from any real ones."""
-    powers = np.exp(coordinates - coordinates.max())
-    return np.asarray(powers / powers.sum())
+    return np.asarray(softmax(found.x))
 
 
 def own_weights(weights: Array, own_errors: Array, pool: Flags) -> Array:
