@@ -46,7 +46,7 @@ _PERFECT = 1e-18  # a mean squared error of scaled data under this is a perfect 
 _PIVOT = 1e-9  # states that the others tell up to this share are not identified: they stay at 0
 _STEPS = 200
 _ALPHAS = (0.56, 1.09, 1.77, 2.44)  # angles of the cold starts: alpha about .08, .27, .60, .88
-_LOWS, _PHI = (0.44, 1.09), 2.05  # of beta and gamma: about .05 and .27; of phi: about .93
+_BETAS, _GAMMAS, _PHI = (0.44, 1.09, 2.5), (0.44, 1.09), 2.05  # about .05, .27, .90; .05, .27; and .93
 
 
 class Task(NamedTuple):
@@ -339,8 +339,8 @@ def descend(
 
 
 @compiled
-def cold_starts(task: Task, room: Room, size: int, points: Array, values: Array) -> float:
-    """Best points of the coarse grid in eight groups, by low and high alpha, beta and gamma, and their deviances.
+def cold_starts(task: Task, room: Room, size: int, betas: int, points: Array, values: Array) -> float:
+    """Fill the best points of a coarse grid, by halves of alpha, by beta and by gamma, and their deviances.
 
     Returns the least sum of squares met, or infinity where every point leaves the positive region.
     """
@@ -349,22 +349,22 @@ def cold_starts(task: Task, room: Room, size: int, points: Array, values: Array)
     point = np.zeros(size)
     free = np.isnan(task.held)
     for a in range(4 if free[0] else 1):
-        for b in range(2 if free[1] else 1):
+        for b in range(betas if free[1] else 1):
             for g in range(2 if free[2] else 1):
                 at = 0
                 if free[0]:
                     point[at] = _ALPHAS[a]
                     at += 1
                 if free[1]:
-                    point[at] = _LOWS[b]
+                    point[at] = _BETAS[b]
                     at += 1
                 if free[2]:
-                    point[at] = _LOWS[g]
+                    point[at] = _GAMMAS[g]
                     at += 1
                 if free[3]:
                     point[at] = _PHI
                 value, total = deviance(task, point, room)
-                group = a // 2 + 2 * b + 4 * g
+                group = a // 2 + 2 * b + 6 * g
                 if value < values[group]:
                     values[group] = value
                     points[group, :] = point
@@ -401,9 +401,9 @@ def search(task: Task, starts: int, tolerance: float, room: Room) -> float:
     if task.states == SEARCH:
         for j in range(task.start.size):
             size += task.unit[j] > 0.0
-    points, values = np.zeros((8, size)), np.empty(8)
+    points, values = np.zeros((12, size)), np.empty(12)
     found = np.zeros(size)
-    least = cold_starts(task, room, size, points, values)
+    least = cold_starts(task, room, size, 3 if starts > 2 else 2, points, values)
     best = np.inf
     if least < np.inf:
         in_units(task, least)

@@ -31,7 +31,7 @@ Array = NDArray[np.float64]
 
 SEASON_UPDATES = ("expected level", "new level")
 CONSTANTS = ("alpha", "beta", "gamma", "phi")
-_STARTS, _TOLERANCE = 8, 1e-9  # cold starts, and the gain of the deviance that no longer counts
+_STARTS, _TOLERANCE = 12, 1e-9  # cold starts, and the gain of the deviance that no longer counts
 
 
 @dataclass(frozen=True)
