@@ -145,6 +145,13 @@ def profile(task: Task, room: Room) -> float:
 
 
 @compiled
+def carry(source: Array, target: Array) -> None:
+    """Copy a row into another. (A slice that takes an array costs the compiler two seconds.)"""
+    for i in range(target.size):
+        target[i] = source[i]
+
+
+@compiled
 def place(task: Task, point: Array, room: Room) -> None:
     """Turn a point of the search into constants and starting states.
 
@@ -367,7 +374,7 @@ def cold_starts(task: Task, room: Room, size: int, betas: int, points: Array, va
                 group = a // 2 + 2 * b + 6 * g
                 if value < values[group]:
                     values[group] = value
-                    points[group, :] = point
+                    carry(point, points[group])
                 if value < best:
                     best, least = value, total
     return least
@@ -394,13 +401,11 @@ def search(task: Task, starts: int, tolerance: float, room: Room) -> float:
     The task's `start` becomes the starting states found. Infinite, with `start` as it
     was, where no cold start stays inside the positive region.
     """
-    angles = 0
-    for i in range(4):
-        angles += math.isnan(task.held[i])
+    # sums of arrays, not counts from a literal 0: for the compiler that would be a type of its own
+    angles = int(np.isnan(task.held).sum())
     size = angles
     if task.states == SEARCH:
-        for j in range(task.start.size):
-            size += task.unit[j] > 0.0
+        size += int((task.unit > 0.0).sum())
     points, values = np.zeros((12, size)), np.empty(12)
     found = np.zeros(size)
     least = cold_starts(task, room, size, 3 if starts > 2 else 2, points, values)
@@ -412,7 +417,7 @@ def search(task: Task, starts: int, tolerance: float, room: Room) -> float:
             value = descend(task, room, angles, points[group], tolerance, best)
             if value < best:
                 best = value
-                found[:] = points[group]
+                carry(points[group], found)
             values[group] = np.inf
             # The next start comes from the other half of alphas, where the deepest other valley mostly lies.
             half = 1 - group % 2
@@ -424,7 +429,7 @@ def search(task: Task, starts: int, tolerance: float, room: Room) -> float:
     place(task, found, room)
     if task.states == PROFILE:
         profile(task, room)
-    task.start[:] = room.state
+    carry(room.state, task.start)
     return best
 
 
@@ -487,7 +492,8 @@ def fit_one(
         states = HOLD
         before[0] = (before[0] - centre) / scale
         before[1] /= scale
-        before[2:] /= factor
+        for j in range(2, m + 2):
+            before[j] /= factor
     else:
         states = SEARCH if positive else PROFILE
         classical_start(y, m, trend, season, positive, before)
@@ -500,7 +506,7 @@ def fit_one(
             before[2:] = 0.0 if season != MULTIPLICATIVE else 1.0
             best = search(task, starts, tolerance, room)
         balance(season, before)
-    after[:] = before
+    carry(before, after)
     total, _ = run(y, first, error, season, m, new_level, constants, after, errors, room.trace)
     square = 0.0
     for t in range(first, n):
@@ -510,7 +516,8 @@ def fit_one(
     for state in (before, after):
         state[0] = state[0] * scale + centre
         state[1] *= scale
-        state[2:] *= factor
+        for j in range(2, m + 2):
+            state[j] *= factor
     square *= scale * scale
     best += (n - first) * (2.0 * math.log(scale) - math.log(n - first))
     return best, square, total if error == MULTIPLICATIVE else square
@@ -519,13 +526,18 @@ def fit_one(
 @compiled
 def balance(season: int, state: Array) -> None:
     """Give additive indices the mean 0 and factors the mean 1: with the level they are known only up to that."""
-    mean = np.mean(state[2:])
+    mean = 0.0
+    for j in range(2, state.size):
+        mean += state[j] / (state.size - 2)
     if season == ADDITIVE:
         state[0] += mean
-        state[2:] -= mean
+        for j in range(2, state.size):
+            state[j] -= mean
     elif season == MULTIPLICATIVE:
-        state[:2] *= mean
-        state[2:] /= mean
+        state[0] *= mean
+        state[1] *= mean
+        for j in range(2, state.size):
+            state[j] /= mean
 
 
 @compiled

@@ -103,7 +103,7 @@ def fit_form(
     Snyder (2008), tables 2.1-2.2; Hyndman & Athanasopoulos, Forecasting: Principles and
     Practice (2nd ed. 2018), chapter 7.
     """
-    m = season_length if form.season != NO_SEASON else 1
+    m = int(season_length) if form.season != NO_SEASON else 1
     _check(form, values, m, season_update)
     new_level = season_update == "new level"
     fixed = {name: float(value) for name, value in (constants or {}).items() if name in form.constants}

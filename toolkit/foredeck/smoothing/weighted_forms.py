@@ -84,7 +84,7 @@ class FormFits:
 
 def fit_forms(values: Array, season_length: int, constants: Mapping[str, float] | None = None) -> FormFits:
     """Fit the fifteen forms to one series, with the named constants held in all forms that have them."""
-    m = season_length if season_length <= LONGEST_SEASON else 1
+    m = int(season_length) if season_length <= LONGEST_SEASON else 1
     fixed = {name: float(value) for name, value in (constants or {}).items() if name in CONSTANTS}
     held = np.array([fixed.get(name, np.nan) for name in CONSTANTS])
     n, size = values.size, len(FORMS)
