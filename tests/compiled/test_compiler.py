@@ -123,3 +123,12 @@ def test_beside_the_modules_what_an_earlier_version_left_is_cleared_away(package
     found = end(start(package, HOME=tmp_path))
     assert Path(found["folder"]).parent == beside
     assert [path for path in beside.iterdir() if path.is_dir()] == [Path(found["folder"])]
+
+
+def test_a_process_whose_folder_was_cleared_away_meanwhile_goes_on(package, tmp_path):
+    home = tmp_path / "home"
+    home.mkdir()
+    process = start(package, HOME=home)
+    assert process.stdout.readline() == "ready\n"
+    shutil.rmtree(home / ".cache")
+    assert end(process)["state"][0] > 0

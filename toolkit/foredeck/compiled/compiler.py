@@ -135,6 +135,8 @@ def _lock(folder: Path) -> Iterator[None]:
     if fcntl is None or _depth:
         yield
         return
+    # an update of the package may have cleared the folder while this process runs on with the old one
+    folder.mkdir(parents=True, exist_ok=True)
     with (folder / "lock").open("w") as file:
         fcntl.flock(file, fcntl.LOCK_EX)
         _depth += 1
