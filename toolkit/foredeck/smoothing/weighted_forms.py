@@ -13,7 +13,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from functools import partial
+from functools import lru_cache, partial
 from itertools import product
 
 import numpy as np
@@ -92,12 +92,18 @@ def fit_forms(values: Array, season_length: int, constants: Mapping[str, float] 
     used, states, sigma2 = np.zeros((size, 4)), np.zeros((size, m + 2)), np.full(size, np.nan)
     own = np.array(values, dtype=np.float64)  # a writable row: for any other the compiler would begin anew
     all_forms(own, m, CODES, held, _STARTS, _TOLERANCE, np.empty((size, 0)), fitted, aicc, used, states, sigma2)
-    counts = np.array([
-        sum(name not in fixed for name in form.constants) + form.trend + (m if form.season else 1) for form in FORMS
-    ])
+    counts = _counts(tuple(fixed), m)
     best = aicc.min()
     weights = np.exp(-0.5 * (aicc - best)) if np.isfinite(best) else np.zeros(size)
     return FormFits(n, m, fitted, weights / max(weights.sum(), 1e-300), used, states, sigma2, counts)
+
+
+@lru_cache(maxsize=64)
+def _counts(fixed: tuple[str, ...], m: int) -> NDArray[np.int64]:
+    """Constants and starting states that each form estimates."""
+    return np.array([
+        sum(name not in fixed for name in form.constants) + form.trend + (m if form.season else 1) for form in FORMS
+    ])
 
 
 def fit_best_form(values: Array, season_length: int, constants: Mapping[str, float] | None = None) -> Fitted:
