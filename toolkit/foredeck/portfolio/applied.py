@@ -7,7 +7,7 @@ Cheap: nothing is fitted here. The result is the part of a round's tables (see
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 import pandas as pd
@@ -16,6 +16,8 @@ from numpy.typing import NDArray
 from foredeck.backtests.error_table import summary
 from foredeck.periods import period_name
 from foredeck.portfolio.alone import Alone
+from foredeck.portfolio.count_ranges import origin_limits
+from foredeck.portfolio.explained import named_in_a_sentence, percent
 from foredeck.portfolio.fit import PortfolioFit
 from foredeck.portfolio.procedure import Procedure
 from foredeck.portfolio.ranges import scales
@@ -30,6 +32,7 @@ def apply_fit(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> dict[str
     `members`, `forecasts` and `reliability`.
     """
     scale = scales(alone, procedure, fit.nonnegative)
+    counted = origin_limits(alone, procedure, fit.levels, fit.nonnegative)
     leads = np.arange(fit.horizon)
     names = [period_name(p) for p in alone.periods]
     ahead = [period_name(alone.periods[-1] + lead) for lead in range(1, fit.horizon + 1)]
@@ -45,8 +48,9 @@ def apply_fit(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> dict[str
         "members": _members(alone, procedure, ahead),
         "forecasts": pd.DataFrame({"series": alone.series.name, "period": ahead,
                                    "lead": leads + 1, "baseline": procedure.forecasts[-1],
-                                   **_limits(procedure.forecasts[-1], scale[-1], fit, np.zeros_like(leads), leads)}),
-        "reliability": _reliability(alone, procedure, fit, scale, names),
+                                   **_limits(procedure.forecasts[-1], scale[-1], fit, np.zeros_like(leads), leads,
+                                             np.moveaxis(counted[-1], -1, 0))}),
+        "reliability": _reliability(alone, procedure, fit, scale, counted, names),
     }
 
 
@@ -55,14 +59,18 @@ def window_scale(alone: Alone, procedure: Procedure, fit: PortfolioFit) -> Array
     return np.asarray(scales(alone, procedure, fit.nonnegative)[-1])
 
 
-def _limits(forecast: Array, scale: Array, fit: PortfolioFit, offset: Places, lead: Places) -> dict[str, Array]:
-    """Limits of forecasts made so many periods before the closing period, at 0-based leads; all of one shape."""
+def _limits(forecast: Array, scale: Array, fit: PortfolioFit, offset: Places, lead: Places,
+            counted: Array) -> dict[str, Array]:
+    """Limits of forecasts made so many periods before the closing period, at 0-based leads; all of one shape.
+
+    `counted`, of that shape with (levels, 2) behind it, are limits from counts; they stand wherever they are known.
+    """
     columns = {}
     for at, level in enumerate(fit.levels):
-        columns[f"lower_{level}"] = forecast - fit.multipliers[offset, at, 0, lead] * scale
-        columns[f"upper_{level}"] = forecast + fit.multipliers[offset, at, 1, lead] * scale
-    if fit.nonnegative:
-        columns = {name: np.maximum(values, 0.0) for name, values in columns.items()}
+        for side, (name, sign) in enumerate((("lower", -1.0), ("upper", 1.0))):
+            limit = forecast + sign * fit.multipliers[offset, at, side, lead] * scale
+            limit = np.maximum(limit, 0.0) if fit.nonnegative else limit
+            columns[f"{name}_{level}"] = np.where(np.isnan(counted[:, at, side]), limit, counted[:, at, side])
     return columns
 
 
@@ -85,7 +93,7 @@ def _members(alone: Alone, procedure: Procedure, ahead: list[str]) -> pd.DataFra
         "constants": np.repeat(np.array(constants, dtype=object)[there], horizon)})
 
 
-def _reliability(alone: Alone, procedure: Procedure, fit: PortfolioFit, scale: Array,
+def _reliability(alone: Alone, procedure: Procedure, fit: PortfolioFit, scale: Array, counted: Array,
                  names: list[str]) -> pd.DataFrame:
     """The procedure's past forecasts with the ranges it would have given, beside the actual and the seasonal naive."""
     seasonal, naive = (alone.cube.forecasts[alone.cube.methods.index(name)] for name in ("seasonal_naive", "naive"))
@@ -94,7 +102,8 @@ def _reliability(alone: Alone, procedure: Procedure, fit: PortfolioFit, scale: A
     origin, lead = np.nonzero(np.isfinite(actual) & np.isfinite(forecasts))
     known = alone.cube.known[origin]
     named = np.array(names, dtype=object)
-    limits = _limits(forecasts[origin, lead], scale[origin, lead], fit, alone.offsets[origin], lead)
+    limits = _limits(forecasts[origin, lead], scale[origin, lead], fit, alone.offsets[origin], lead,
+                     counted[origin, :, :, lead])
     return pd.DataFrame({
         "series": alone.series.name, "origin": named[known - 1], "period": named[known + lead],
         "lead": lead.astype(np.int64) + 1, "forecast": forecasts[origin, lead], "actual": actual[origin, lead],
@@ -117,13 +126,21 @@ def _series_row(alone: Alone, procedure: Procedure, names: list[str]) -> pd.Data
 
 
 def method_words(used: Mapping[str, float]) -> str:
-    """The method in plain words: one sentence for one method, the leaders for a blend."""
-    if len(used) == 1:
-        return METHODS[next(iter(used))].sentence
+    """The method in plain words: one sentence for one method; for a blend who leads it, and who comes next."""
     ranked = sorted(used, key=lambda name: -used[name])
+    first = METHODS[ranked[0]]
+    if len(used) == 1:
+        return first.sentence
     if max(used.values()) - min(used.values()) < 1e-9:
-        return (f"The forecast is the plain mean of {len(used)} methods: "
-                f"{'; '.join(METHODS[name].title for name in used)}.")
-    leaders = ", ".join(f"{METHODS[name].title} ({100 * used[name]:.0f} %)" for name in ranked[:3])
-    return (f"The forecast is a blend of {len(used)} methods, led by {leaders}. "
-            f"{METHODS[ranked[0]].title}: {METHODS[ranked[0]].sentence[0].lower()}{METHODS[ranked[0]].sentence[1:]}")
+        kind = " for intermittent demand" if first.family == "demand rate" else ""
+        names = [named_in_a_sentence(name) for name in used]
+        rates = " Each sets how large a demand usually is against how often one comes." if kind else ""
+        return f"The forecast is the plain mean of {len(used)} methods{kind}: {_listed(names)}.{rates}"
+    next_ones = [f"{named_in_a_sentence(name)} ({percent(used[name])})" for name in ranked[1:3]]
+    return (f"The forecast is a blend of {len(used)} methods, led by {named_in_a_sentence(ranked[0])} with "
+            f"{percent(used[ranked[0]])}. {first.sentence} Next {'comes' if len(next_ones) == 1 else 'come'} "
+            f"{_listed(next_ones)}.")
+
+
+def _listed(names: Sequence[str]) -> str:
+    return " and ".join([", ".join(names[:-1]), names[-1]] if len(names) > 1 else names)

@@ -18,9 +18,10 @@ from numpy.typing import NDArray
 
 from foredeck.periods import Frequency
 from foredeck.portfolio.alone import Alone, ForecastOptions, origin_count
+from foredeck.portfolio.count_ranges import intermittent_at
 from foredeck.portfolio.explained import fit_facts, fit_words
 from foredeck.portfolio.procedure import Procedure, live_through
-from foredeck.portfolio.ranges import multipliers, scales
+from foredeck.portfolio.ranges import multipliers, of_ordinary_series, scales
 from foredeck.portfolio.weights import Learned, learn_from
 
 Array = NDArray[np.float64]
@@ -92,10 +93,13 @@ def fit_portfolio(alones: Sequence[Alone],
     learned = learn_from(alones, options)
     procedures = [live_through(alone, options.style, learned) for alone in alones]
     standardised = standardised_errors(alones, procedures, largest, options.nonnegative)
+    counted = np.zeros(standardised.shape[:2], dtype=np.bool_)
+    for row, alone in zip(counted, alones, strict=True):
+        row[alone.offsets] = intermittent_at(alone.raw, alone.cube.known, options.nonnegative)
     fit = PortfolioFit(style=options.style, levels=options.levels, horizon=options.horizon,
                        nonnegative=options.nonnegative, season_length=season_length, n_series=len(alones),
                        asked=options.methods, learned=learned,
-                       multipliers=multipliers(standardised, options.levels),
+                       multipliers=multipliers(of_ordinary_series(standardised, counted), options.levels),
                        facts=fit_facts(alones, procedures, learned))
     return fit, procedures, standardised
 

@@ -6,6 +6,7 @@ ranges of that origin, so the coverage that is reported was achieved, not fitted
 (split conformal prediction with whole origins kept together; Vovk, Gammerman & Shafer
 2005, chapter 2, for exchangeable errors. Series share shocks, so that few origins are few
 errors however many the series: the multipliers are widened as Student's t is).
+Intermittent series have ranges of their own: `count_ranges`.
 """
 
 from __future__ import annotations
@@ -99,6 +100,24 @@ def multipliers(standardised: Array, levels: tuple[int, ...]) -> Array:
         if lead == 0 and gap[0]:
             out[0, :, :, 0] = _without_errors(levels)
     return out
+
+
+def of_ordinary_series(standardised: Array, counted: NDArray[np.bool_]) -> Array:
+    """Standardised errors without those of intermittent series, whose ranges come from counts.
+
+    Parameters
+    ----------
+    standardised : array, shape (series, largest offset + 1, horizon)
+    counted : array of bool, shape (series, largest offset + 1)
+        Where a series was intermittent by what was known then.
+
+    Returns
+    -------
+    array, the shape of `standardised`
+        All errors where nothing else is left: some range is better than none.
+    """
+    left = np.where(counted[:, :, None], np.nan, standardised)
+    return left if np.isfinite(left).any() else standardised
 
 
 def _without_errors(levels: tuple[int, ...]) -> Array:

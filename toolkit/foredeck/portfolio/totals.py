@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from foredeck.periods import FinancialYear, period_name
 from foredeck.portfolio.alone import Alone
 from foredeck.portfolio.applied import window_scale
+from foredeck.portfolio.count_ranges import Demand, demand_of, intermittent_at, sum_limits
 from foredeck.portfolio.fit import PortfolioFit
 from foredeck.portfolio.joint_totals import WindowErrors, total_range, window_errors
 from foredeck.portfolio.procedure import Procedure
@@ -66,6 +67,7 @@ def totals_table(alones: Sequence[Alone], procedures: Sequence[Procedure], fit: 
     base, final = (_matrix(adjusted, column, names, fit.horizon) for column in ("baseline", "adjusted"))
     scale = np.stack([window_scale(a, p, fit) for a, p in zip(alones, procedures, strict=True)])
     closing = alones[0].periods[-1]
+    counted = [demand_of(a.raw) if intermittent_at(a.raw, [len(a.raw)], fit.nonnegative)[0] else None for a in alones]
     rows = []
     for window in windows(closing, fit.horizon, named, year):
         errors = window_errors(standardised, scale, window.leads, fit.levels, fit.multipliers[0])
@@ -73,19 +75,27 @@ def totals_table(alones: Sequence[Alone], procedures: Sequence[Procedure], fit: 
         for scope, member, rows_of in _scopes(alones, groups):
             if scope == "series" and len(window.leads) == 1 and window.known_periods == 0:
                 continue  # the forecasts table has it
-            rows.append(_row(scope, member, rows_of, window, closing, base, final, to_date, last_year, errors, fit))
+            one = counted[rows_of[0]] if len(rows_of) == 1 else None
+            rows.append(_row(scope, member, rows_of, window, closing, base, final, to_date, last_year, errors, one,
+                             fit))
     return pd.DataFrame(rows)
 
 
 def _row(scope: str, member: str, rows: NDArray[np.int64], window: Window, closing: pd.Period, base: Array,
-         final: Array, to_date: Array, last_year: Array, errors: WindowErrors, fit: PortfolioFit) -> dict[str, object]:
+         final: Array, to_date: Array, last_year: Array, errors: WindowErrors, counted: Demand | None,
+         fit: PortfolioFit) -> dict[str, object]:
     done = float(to_date[rows].sum())
     baseline = done + float(base[np.ix_(rows, window.leads)].sum())
     adjusted = done + float(final[np.ix_(rows, window.leads)].sum())
+    if counted is None:
+        edges = adjusted + total_range(errors, rows) * np.array([-1.0, 1.0])
+    else:
+        expected = float(base[np.ix_(rows, window.leads)].sum())
+        edges = done + (adjusted - baseline) + sum_limits(counted, expected, len(window.leads), fit.levels)
     limits: dict[str, float] = {}
-    for level, (lower, upper) in zip(fit.levels, total_range(errors, rows), strict=True):
-        limits[f"lower_{level}"] = max(adjusted - lower, done) if fit.nonnegative else adjusted - lower
-        limits[f"upper_{level}"] = adjusted + upper
+    for level, (lower, upper) in zip(fit.levels, edges.tolist(), strict=True):
+        limits[f"lower_{level}"] = max(lower, done) if fit.nonnegative else lower
+        limits[f"upper_{level}"] = upper
     first = closing + 1 + int(window.leads[0]) - window.known_periods
     return {"scope": scope, "member": member, "window": window.name, "first": period_name(first),
             "last": period_name(closing + 1 + int(window.leads[-1])), "baseline": baseline,
