@@ -35,6 +35,7 @@
     var marker = trace.marker;
     if (!marker || trace.type !== "scatter") return;
     if (typeof marker.size === "number") marker.size *= scale;
+    else if (Array.isArray(marker.size)) marker.size = marker.size.map(function (size) { return size * scale; });
     if (marker.line && typeof marker.line.width === "number") marker.line.width *= 0.85;
   }
   function drawOne(slot, spec, width, printed, first) {

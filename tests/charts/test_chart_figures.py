@@ -11,7 +11,7 @@ import pytest
 
 import foredeck.charts
 from foredeck.charts.figure import PLOTLY
-from foredeck.charts.weight_chart import leading_constant, weights_of
+from foredeck.charts.weight_chart import smoothed_levels, weights_figure, weights_in_blend, weights_of
 from sample_round import HOSTILE, INTERMITTENT, NAMES, NEWCOMER, NOT_FORECAST, SEASONAL, TREND, sample_study
 
 CHARTS = ("outlook", "trust", "last_time", "season", "weights", "members")
@@ -136,10 +136,38 @@ def test_weights_are_browns_and_sum_with_the_rest_to_one():
     assert weights_of(0.2, 100).sum() == pytest.approx(1 - 0.8**100)
 
 
-def test_weights_are_drawn_only_for_a_method_that_leads():
-    members = sample_study(SEASONAL).members
-    assert leading_constant(members) == ("holt_winters_additive", 0.2)
-    assert leading_constant(members.assign(weight=0.25)) is None
+def test_weights_in_a_blend_are_the_weighted_mean_of_its_methods_weights():
+    expected = [(0.6 * 0.2 * 0.8**k + 0.2 * 0.5 * 0.5**k) / 0.8 for k in range(4)]
+    assert weights_in_blend([(0.6, 0.2), (0.2, 0.5)], 4).tolist() == pytest.approx(expected)
+    drawn_bars = weights_figure([(0.6, 0.2), (0.2, 0.5)], 4, closing="2026-10", frequency="monthly").data[0]["y"]
+    assert drawn_bars == pytest.approx([100 * part for part in expected], rel=1e-6)
+
+
+def test_weights_are_drawn_only_where_methods_that_smooth_a_level_have_half_of_the_forecast():
+    study = sample_study(SEASONAL)
+    # the other half smooths changes on last year, and no level
+    assert smoothed_levels(study.members) == [("holt_winters_additive", 0.5, 0.2)]
+    assert drawn("weights", study) is not None
+    assert drawn("weights", replace(study, members=study.members.assign(weight=0.4))) is None
+
+
+def test_weights_of_intermittent_demand_are_not_drawn_because_its_constants_count_demands():
+    study = sample_study(INTERMITTENT)
+    members = study.members.assign(constants='{"alpha": 0.2}', weight=1.0)
+    assert smoothed_levels(members)
+    assert drawn("weights", replace(study, members=members)) is None
+
+
+def test_circles_of_members_have_areas_by_weight_and_the_leader_stands_first_in_the_table():
+    study = sample_study(SEASONAL)
+    assert drawn("members", study).data[0]["marker"]["size"] == 7
+    leading = study.members["method"] == "seasonally_differenced_ses"
+    led = replace(study, members=study.members.assign(weight=leading.map({True: 0.8, False: 0.2})))
+    figure = drawn("members", led)
+    first, second = figure.data[0]["marker"]["size"][:2]
+    assert (first / second) ** 2 == pytest.approx(0.8 / 0.2, rel=1e-5)
+    assert figure.table["Part of 100"].tolist() == ["80", "20"]
+    assert figure.table["Method"].tolist()[0] == "seasonally differenced ses"
 
 
 def test_members_are_drawn_only_where_there_are_several():

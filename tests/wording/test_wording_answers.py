@@ -7,7 +7,9 @@ from dataclasses import replace
 
 import pytest
 
+from foredeck.smoothing.catalogue import METHODS
 from foredeck.wording.answers import answers, headline
+from foredeck.wording.catalogue import method_name
 from foredeck.wording.facts import facts_of
 from sample_round import HOSTILE, INTERMITTENT, NEWCOMER, NOT_FORECAST, SEASONAL, TREND, sample_study
 
@@ -153,3 +155,8 @@ def test_every_scale_is_rounded_to_what_its_range_supports(scale, figure):
 
 def test_names_are_plain_text_to_be_escaped_by_the_page():
     assert facts_of(sample_study(HOSTILE)).name == HOSTILE
+
+
+@pytest.mark.parametrize("method", list(METHODS))
+def test_every_method_of_the_catalogue_is_named_for_readers(method):
+    assert method_name(method).replace("’", "'") == METHODS[method].title

@@ -34,10 +34,13 @@ LABELS: dict[str, str] = {
     "season earlier": "earlier years", "season latest": "latest year",
     "weight lead": "How much each past {noun} counts", "weight rest": "in the level of “{method}”, out of 100; "
         "newest at the right.",
+    "weight rest blend": "in the level that the forecast starts from, out of 100: the methods that smooth one taken "
+        "together, newest at the right.",
     "weight alt": "Weights of past {plural}: the newest counts {first} of 100, the newest three {three}.",
     "weight three": "newest three: {value} of 100", "weight older": "all older: {value}",
     "members lead": "The methods that were blended, {unit}.",
-    "members rest": "Diamonds: the forecast. Circles: each of its {n} methods.", "each method": "each method",
+    "members rest": "Diamonds: the forecast. Circles: each of its {n} methods.",
+    "members sizes": " A larger circle counts more.", "each method": "each method",
     "members from": " The scale does not begin at zero: read the distances.",
     "members alt": "Forecasts of {n} methods beside their blend; in {when} they lie between {low} and {high} {unit}.",
     "same as last": "same as last value", "same as yearly": "same as year before", "same as other": "same as last year",
@@ -49,7 +52,7 @@ LABELS: dict[str, str] = {
     "no script": "This chart is drawn by script. Its numbers are in the table below.",
     "period": "Period", "lower": "{level}, from", "upper": "to", "method": "Method", "miss": "Miss",
     "where": "Where it fell", "no range": "no range", "inside": "inside", "above": "above", "below": "below",
-    "tried": "Forecasts tried", "weight": "Weight of 100", "cumulative": "With all newer",
+    "tried": "Forecasts tried", "weight": "Weight of 100", "part": "Part of 100", "cumulative": "With all newer",
     "strip alt": "{when}: forecast {value} {unit}{range}{before}{past}.",
     "strip said": "last round said {value}", "strip said short": "last round {value}",
     "strip range": ", {level} {lower} to {upper}",

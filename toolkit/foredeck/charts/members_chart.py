@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
+import numpy as np
 import pandas as pd
 
-from foredeck.charts.figure import Figure, note, scatter
+from foredeck.charts.figure import Figure, note, numbers, scatter
 from foredeck.charts.labels import label
 from foredeck.charts.scale import decimals_for, number, pushed_apart, value_axis
 from foredeck.charts.theme import role
@@ -15,6 +16,9 @@ from foredeck.charts.time_axis import TimeAxis
 from foredeck.studies import Study
 
 HEIGHT, TOP, FOOT = 300, 14, 40
+CIRCLE = 7
+"""Diameter of the circles of methods that count the same; unequal ones have areas by weight, up to `LARGEST`."""
+SMALLEST, LARGEST = 4, 12
 
 
 def members(study: Study, names: Mapping[str, str] | None = None, id: str = "members") -> Figure | None:
@@ -43,7 +47,8 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
         return None
     time = TimeAxis.closed_at(closing, frequency)
     ahead = adjusted.sort_values("lead").assign(at=lambda t: time.places(t["period"]))
-    used = used.assign(at=time.places(used["period"])).sort_values(["at", "method"])
+    used = used.assign(at=time.places(used["period"])).sort_values(["at", "weight", "method"],
+                                                                ascending=[True, False, True])
     values = [*used["forecast"], *ahead["baseline"]]
     axis = value_axis(values, zero=False, room=0.08)
     decimals = 0 if max(map(abs, values)) >= 100 else decimals_for(values)
@@ -52,7 +57,9 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
     forecast = [f"{time.name(k)}: {label('forecast')} {number(v, decimals)}"
                 for k, v in zip(ahead["at"], ahead["baseline"], strict=True)]
     circles = role("last_year", mode="markers")
-    circles["marker"]["size"] = 7
+    equal = float(used["weight"].max() - used["weight"].min()) < 1e-9
+    circles["marker"]["size"] = CIRCLE if equal else numbers(
+        np.maximum(SMALLEST, LARGEST * np.sqrt(used["weight"] / used["weight"].max())))
     data = [scatter(used["at"], used["forecast"], circles, said),
             scatter(ahead["at"], ahead["baseline"], role("forecast"), forecast)]
     first, last = int(ahead["at"].iloc[0]), int(ahead["at"].iloc[-1])
@@ -70,7 +77,8 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
     count = used["method"].nunique()
     alt = label("members alt", n=count, when=time.name(first), low=number(float(now.min()), decimals),
                 high=number(float(now.max()), decimals), unit=unit)
-    rest = label("members rest", n=count) + (label("members from") if axis.low > 0 else "")
+    rest = label("members rest", n=count) + ("" if equal else label("members sizes")) + (
+        label("members from") if axis.low > 0 else "")
     return Figure(id, data, layout, narrow, label("members lead", unit=unit), rest, alt,
                   _table(used, time, decimals, names))
 
@@ -81,8 +89,10 @@ def shown(method: str, names: Mapping[str, str] | None) -> str:
 
 
 def _table(used: pd.DataFrame, time: TimeAxis, decimals: int, names: Mapping[str, str] | None) -> pd.DataFrame:
-    """One row a method (there may be many), one column a period."""
-    wide = used.pivot(index="method", columns="at", values="forecast")
-    cells = [[shown(str(method), names), *[number(v, decimals) for v in row]]
-             for method, row in zip(wide.index, wide.to_numpy(), strict=True)]
-    return pd.DataFrame(cells, columns=[label("method"), *[time.name(int(k)) for k in wide.columns]])
+    """One row a method (there may be many), the leading one first; its part, then one column a period."""
+    parts = used.groupby("method", sort=False)["weight"].first()
+    wide = used.pivot(index="method", columns="at", values="forecast").loc[parts.index]
+    cells = [[shown(str(method), names), number(100 * part, 0), *[number(v, decimals) for v in row]]
+             for (method, part), row in zip(parts.items(), wide.to_numpy(), strict=True)]
+    heads = [label("method"), label("part"), *[time.name(int(k)) for k in wide.columns]]
+    return pd.DataFrame(cells, columns=heads)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 import pandas as pd
@@ -17,31 +17,33 @@ from foredeck.charts.time_axis import TimeAxis
 from foredeck.studies import Study
 
 SHOWN = 18
+CHANGES = ("differenced_ses", "seasonally_differenced_ses")
+"""Methods whose constant smooths changes and no level."""
 
 
 def weights(study: Study, names: Mapping[str, str] | None = None, id: str = "weights") -> Figure | None:
-    """Draw the weights of past periods in the method that leads a study's forecast.
+    """Draw the weights of past periods in the level that a study's forecast starts from.
 
-    None where no method with a smoothing constant has at least half of the weight: the
-    chart would then say little about the forecast.
+    None where methods that smooth a level have less than half of the weight, and for
+    intermittent demand, whose methods smooth over demands and not over periods.
     """
-    leading = leading_constant(study.members)
-    if leading is None:
+    levels = smoothed_levels(study.members)
+    if str(study.info.get("demand_class")) in ("intermittent", "lumpy") or sum(level[1] for level in levels) < 0.5:
         return None
-    method, alpha = leading
-    return weights_figure(alpha, len(study.actuals), method=shown(method, names), closing=study.closing,
+    method = shown(levels[0][0], names) if len(levels) == 1 else ""
+    return weights_figure([level[1:] for level in levels], len(study.actuals), method=method, closing=study.closing,
                           frequency=study.frequency, id=id)
 
 
-def leading_constant(members: pd.DataFrame) -> tuple[str, float] | None:
-    """Return the method that smooths a level and has at least half of the weight, and its alpha."""
-    used = members[(members["weight"] >= 0.5) & (members["lead"] == 1)].sort_values(["weight", "method"],
-                                                                                 ascending=[False, True])
-    for row in used.to_dict("records"):
+def smoothed_levels(members: pd.DataFrame) -> list[tuple[str, float, float]]:
+    """Return name, weight and alpha of the methods in the forecast that smooth a level, the leading one first."""
+    used = members[(members["weight"] > 0) & (members["lead"] == 1) & ~members["method"].isin(CHANGES)]
+    found = []
+    for row in used.sort_values(["weight", "method"], ascending=[False, True]).to_dict("records"):
         alpha = json.loads(row["constants"] or "{}").get("alpha")
         if isinstance(alpha, int | float) and 0 < alpha <= 1:
-            return str(row["method"]), float(alpha)
-    return None
+            found.append((str(row["method"]), float(row["weight"]), float(alpha)))
+    return found
 
 
 def weights_of(alpha: float, n: int) -> np.ndarray:
@@ -56,20 +58,28 @@ def weights_of(alpha: float, n: int) -> np.ndarray:
     return weights
 
 
-def weights_figure(alpha: float, n: int, *, method: str, closing: str, frequency: str, id: str = "weights") -> Figure:
+def weights_in_blend(levels: Sequence[tuple[float, float]], n: int) -> np.ndarray:
+    """Weights of the newest `n` periods in the weighted mean of smoothed levels, given as (weight, alpha)."""
+    counted: np.ndarray = np.average([weights_of(alpha, n) for _, alpha in levels], axis=0,
+                                     weights=[weight for weight, _ in levels])
+    return counted
+
+
+def weights_figure(levels: Sequence[tuple[float, float]], n: int, *, method: str = "", closing: str, frequency: str,
+                   id: str = "weights") -> Figure:
     """Draw the weights of the newest periods.
 
     Parameters
     ----------
-    alpha : float
-        smoothing constant of the level, 0 < alpha <= 1
+    levels : sequence of (weight, alpha)
+        of each method that smooths a level: its part in the forecast, and its constant, 0 < alpha <= 1
     n : int
         periods of history
     method : str
-        its name as readers see it
+        name, as readers see it, of the one method; empty for several
     """
     time = TimeAxis.closed_at(closing, frequency)
-    parts = 100 * weights_of(alpha, min(n, SHOWN))
+    parts = 100 * weights_in_blend(levels, min(n, SHOWN))
     at = [-k for k in range(len(parts))]
     filled = [colour("ink") if k < 3 else colour("paper") for k in range(len(parts))]
     # A weight is a whole number of 100 except where rounding would make the newest vanish.
@@ -91,4 +101,4 @@ def weights_figure(alpha: float, n: int, *, method: str, closing: str, frequency
     alt = label("weight alt", plural=time.frequency.plural, first=number(float(parts[0]), decimals),
                 three=number(three, decimals))
     return Figure(id, data, layout, narrow, label("weight lead", noun=time.frequency.noun),
-                  label("weight rest", method=method), alt, table)
+                  label("weight rest", method=method) if method else label("weight rest blend"), alt, table)

@@ -7,7 +7,7 @@ Cheap: nothing is fitted here. The result is the part of a round's tables (see
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 import pandas as pd
@@ -17,6 +17,7 @@ from foredeck.backtests.error_table import summary
 from foredeck.periods import period_name
 from foredeck.portfolio.alone import Alone
 from foredeck.portfolio.count_ranges import origin_limits
+from foredeck.portfolio.explained import named_in_a_sentence, percent
 from foredeck.portfolio.fit import PortfolioFit
 from foredeck.portfolio.procedure import Procedure
 from foredeck.portfolio.ranges import scales
@@ -125,13 +126,21 @@ def _series_row(alone: Alone, procedure: Procedure, names: list[str]) -> pd.Data
 
 
 def method_words(used: Mapping[str, float]) -> str:
-    """The method in plain words: one sentence for one method, the leaders for a blend."""
-    if len(used) == 1:
-        return METHODS[next(iter(used))].sentence
+    """The method in plain words: one sentence for one method; for a blend who leads it, and who comes next."""
     ranked = sorted(used, key=lambda name: -used[name])
+    first = METHODS[ranked[0]]
+    if len(used) == 1:
+        return first.sentence
     if max(used.values()) - min(used.values()) < 1e-9:
-        return (f"The forecast is the plain mean of {len(used)} methods: "
-                f"{'; '.join(METHODS[name].title for name in used)}.")
-    leaders = ", ".join(f"{METHODS[name].title} ({100 * used[name]:.0f} %)" for name in ranked[:3])
-    return (f"The forecast is a blend of {len(used)} methods, led by {leaders}. "
-            f"{METHODS[ranked[0]].title}: {METHODS[ranked[0]].sentence[0].lower()}{METHODS[ranked[0]].sentence[1:]}")
+        kind = " for intermittent demand" if first.family == "demand rate" else ""
+        names = [named_in_a_sentence(name) for name in used]
+        rates = " Each sets how large a demand usually is against how often one comes." if kind else ""
+        return f"The forecast is the plain mean of {len(used)} methods{kind}: {_listed(names)}.{rates}"
+    next_ones = [f"{named_in_a_sentence(name)} ({percent(used[name])})" for name in ranked[1:3]]
+    return (f"The forecast is a blend of {len(used)} methods, led by {named_in_a_sentence(ranked[0])} with "
+            f"{percent(used[ranked[0]])}. {first.sentence} Next {'comes' if len(next_ones) == 1 else 'come'} "
+            f"{_listed(next_ones)}.")
+
+
+def _listed(names: Sequence[str]) -> str:
+    return " and ".join([", ".join(names[:-1]), names[-1]] if len(names) > 1 else names)

@@ -16,6 +16,8 @@ from foredeck.smoothing.catalogue import METHODS
 
 Array = NDArray[np.float64]
 
+_PERSONS = ("Croston", "Holt", "Syntetos", "Teunter")
+
 
 def fit_facts(alones: Sequence[Alone], procedures: Sequence[Procedure], learned: Learned) -> dict[str, Any]:
     """Figures that explain the fit, as plain JSON values.
@@ -26,7 +28,7 @@ def fit_facts(alones: Sequence[Alone], procedures: Sequence[Procedure], learned:
         `weights` and `standing` by method (now, only those that speak), `used` (series by
         method that leads their forecast), `half` (how many of the latest periods hold half
         of the weight; None where no method has an alpha), `edge_then` and `edge_after`
-        (by what share the method that had done best on a series up to a year of origins
+        (by what share the method that had done best on a series up to `edge_back` periods
         ago missed less than the methods on average, up to then and since; None where not
         known), `own_share` (how far the portfolio's own backtests count beside the prior).
     """
@@ -40,6 +42,7 @@ def fit_facts(alones: Sequence[Alone], procedures: Sequence[Procedure], learned:
         "standing": {name: float(learned.standing[0, at[name]]) for name in speaking},
         "used": {name: led.count(name) for name in learned.methods if name in led},
         "half": half_weight(alones, procedures), "edge_then": then, "edge_after": after,
+        "edge_back": YEAR_OF_ORIGINS[alones[0].series.season_length],
         "own_share": smooth / (smooth + PRIOR_SERIES)}
 
 
@@ -47,8 +50,9 @@ def half_weight(alones: Sequence[Alone], procedures: Sequence[Procedure]) -> int
     """Number of latest periods that hold half of the weight, at the portfolio's median alpha."""
     alphas = []
     for alone, procedure in zip(alones, procedures, strict=True):
+        # a demand rate's alpha counts demands, not periods
         known = [(weight, held["alpha"]) for weight, held in zip(procedure.weights[-1], alone.constants, strict=True)
-                 if weight > 0 and "alpha" in held]
+                 if weight > 0 and "alpha" in held] if not alone.pattern.intermittent else []
         if known:
             weight, alpha = np.array(known).T
             alphas.append(float(weight @ alpha / weight.sum()))
@@ -102,12 +106,8 @@ def fit_words(style: str, n_series: int, facts: Mapping[str, Any], period: tuple
     period : tuple of str
         Singular and plural of the frequency's noun.
     """
-    parts = [_blend_words(facts) if style == "blend" else _single_words(facts, n_series)]
-    half = facts["half"]
-    if half is not None:
-        parts.append(f"Half of the weight lies on the latest {'' if half == 1 else f'{half} '}"
-                     f"{period[0] if half == 1 else period[1]}.")
-    parts.append(_edge_words(facts))
+    parts = [_blend_words(facts) if style == "blend" else _single_words(facts, n_series),
+             _half_words(facts["half"], period), _edge_words(facts, period)]
     series = "one series" if n_series == 1 else f"{n_series} series"
     parts.append(f"Ranges come from the misses of past forecasts, pooled over {series}.")
     return " ".join(part for part in parts if part)
@@ -118,31 +118,51 @@ def _blend_words(facts: Mapping[str, Any]) -> str:
     if not weights:
         return "Every series is forecast by the plain mean of the methods for intermittent demand."
     if len(weights) == 1:
-        return f"Every series is forecast by one method: {METHODS[next(iter(weights))].title}."
+        return f"Every series is forecast by one method: {named_in_a_sentence(next(iter(weights)))}."
     leader = max(weights, key=lambda name: weights[name])
-    share = 100 * (1 - np.exp(standing[leader]))
-    than = "as much as the methods on average" if abs(share) < 0.5 else \
-        f"{abs(share):.0f} % {'less' if share > 0 else 'more'} than the methods on average"
-    own = round(100 * facts["own_share"])
-    return (f"The forecast is a blend of {len(weights)} methods, led by {METHODS[leader].title} "
-            f"({100 * weights[leader]:.0f} %), which missed {than} in the backtests of this portfolio. These backtests "
-            f"count {own} % in the weights, the usual weights the rest; on each series, methods that missed less on it "
-            f"count more.")
+    lead = 1 - float(np.exp(standing[leader]))
+    than = "as much as the methods do" if abs(lead) < 0.005 else \
+        f"{percent(abs(lead))} {'less' if lead > 0 else 'more'} than the methods do"
+    return (f"The forecast is a blend of {len(weights)} methods, led by {named_in_a_sentence(leader)} with "
+            f"{percent(weights[leader])}: in the backtests of this portfolio it missed {than} on average. Weights "
+            f"begin nearly equal; these backtests count {percent(facts['own_share'])} in them, and on each series the "
+            f"methods that missed less on it count more.")
 
 
 def _single_words(facts: Mapping[str, Any], n_series: int) -> str:
     used = sorted(facts["used"].items(), key=lambda item: -item[1])
-    named = ", ".join(f"{METHODS[name].title} on {count}" for name, count in used[:3])
+    named = ", ".join(f"{named_in_a_sentence(name)} on {count}" for name, count in used[:3])
     rest = "" if len(used) <= 3 else ", and others"
     return (f"Each series is forecast by one method, settled by its own backtest and the portfolio's, and kept until "
             f"another is clearly better: {named}{rest} of {n_series} series.")
 
 
-def _edge_words(facts: Mapping[str, Any]) -> str:
+def _half_words(half: int | None, period: tuple[str, str]) -> str:
+    if half is None:
+        return ""
+    if half == 1:
+        return f"The latest {period[0]} counts for half or more of the level that a forecast starts from."
+    return (f"The latest {half} {period[1]} count for half of the level that a forecast starts from, all earlier ones "
+            f"for the other half.")
+
+
+def _edge_words(facts: Mapping[str, Any], period: tuple[str, str]) -> str:
     then, after = facts["edge_then"], facts["edge_after"]
     if then is None:
         return ""
-    worth = f"{100 * after:.0f} % less" if after >= 0.005 else \
-        f"{-100 * after:.0f} % more" if after <= -0.005 else "as much"
-    return (f"The method that had done best on a series a year earlier missed {100 * then:.0f} % less than the methods "
-            f"on average up to then, and {worth} since: that is what a winner's lead is worth.")
+    since = f"{percent(abs(after))} {'ahead' if after > 0 else 'behind'} since" if abs(after) >= 0.005 \
+        else "level with it since"
+    return (f"Why not the winner alone? On each series, the method that had missed least until {facts['edge_back']} "
+            f"{period[1]} ago was {percent(then)} ahead of the methods' average then, and {since}: that is what a "
+            f"winner's lead is worth.")
+
+
+def named_in_a_sentence(method: str) -> str:
+    """Title of a method as it stands within a sentence: small, unless it begins with a person's name."""
+    title = METHODS[method].title
+    return title if title.startswith(_PERSONS) else f"{title[0].lower()}{title[1:]}"
+
+
+def percent(part: float) -> str:
+    """A part of 1 in whole per cent, as the pages write it."""
+    return f"{100 * part:.0f}%"

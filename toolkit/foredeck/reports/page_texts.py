@@ -32,7 +32,8 @@ TEXTS: dict[str, str] = {
     "season": "Season", "trend": "Trend", "differencing": "Differencing", "demand": "Demand",
     "demand words": "One {noun} in {adi} has any.",
     "methods lead": "The methods, and what each was given to do.",
-    "methods rest": "Miss: mean absolute error one {noun} ahead in the backtest, {unit}.",
+    "methods rest": "Miss: mean absolute error one {noun} ahead in the backtest, {unit}. Parts rest on the misses at "
+        "every distance and on all series, not on this column alone.",
     "method": "Method", "part": "Part of\nthe blend", "miss": "Miss", "why not": "Why not used",
     "no forecast": "Permitted, but the series is not forecast",
     "not weighted": "Permitted, but has no part in the forecast",
@@ -43,7 +44,8 @@ TEXTS: dict[str, str] = {
     "data words": "{n} {plural}, {first} to {last}",
     "fingerprint": "fingerprint {print}",
     "levels": "Levels {levels}; from the misses of past forecasts",
-    "style": "Style {style}; {n} series. {words}", "output": "Output of a cell",
+    "style": "Style {style}; {n} series. {words}",
+    "style alone": "Style {style}; {n} series; weighted as told under Pattern and method", "output": "Output of a cell",
 }
 
 

@@ -50,21 +50,29 @@ def pattern(study: Study) -> Section:
     if facts.forecast:
         parts.append(paragraph(str(study.info.get("method_words") or ""), lead=words("method lead")))
         names = {m: method_name(m) for m in study.members["method"].unique()}
-        parts += [members_chart(study, names) or "", weights_chart(study, names) or ""]
+        parts += [members_chart(study, names) or "", weights_chart(study, names) or "",
+                  paragraph(weighting_words(study), lead=words("method why"))]
     if len(study.eligibility):
         parts.append(_methods(study, facts))
     return Section("pattern", words("pattern title"), words("pattern sub"), parts)
 
 
+def weighting_words(study: Study) -> str:
+    """What the portfolio fit says of itself; empty for intermittent demand, whose methods it does not weight."""
+    return "" if facts_of(study).intermittent else str(study.portfolio.get("words") or "")
+
+
 def _season(study: Study) -> Part:
-    """Draw the season where there is more of it than noise shows; nothing else."""
+    """Draw the season where there is more of it than noise shows; intermittent demand has none that could be seen."""
     strength = study.info.get("season_strength")
+    if facts_of(study).intermittent:
+        return ""
     return (season_chart(study) if strength is not None and float(strength) >= WEAK else None) or ""
 
 
 def _strengths(study: Study, facts: SeriesFacts) -> list[tuple[str, str]]:
     items = []
-    for key in ("season", "trend"):
+    for key in () if facts.intermittent else ("season", "trend"):
         value = study.info.get(f"{key}_strength")
         strength = math.nan if value is None else float(value)
         told = strength_words(strength)

@@ -11,6 +11,7 @@ from foredeck.charts.outlook_chart import outlook as outlook_chart
 from foredeck.periods import Frequency
 from foredeck.reports.fragments import Part, Section, paragraph, say
 from foredeck.reports.page_texts import text
+from foredeck.reports.series_method import weighting_words
 from foredeck.studies import Study
 from foredeck.tables.html import Cell, Column, pairs, table
 from foredeck.wording.catalogue import say as words
@@ -109,7 +110,8 @@ def _fit(study: Study) -> str:
     fit = study.portfolio
     if not fit.get("n_series"):
         return ""
-    return text("style", style=str(fit.get("style", "")), n=fit["n_series"], words=str(fit.get("words", ""))).strip()
+    key = "style alone" if len(study.adjusted) and weighting_words(study) else "style"
+    return text(key, style=str(fit.get("style", "")), n=fit["n_series"], words=str(fit.get("words", ""))).strip()
 
 
 def glossary(study: Study) -> Section:

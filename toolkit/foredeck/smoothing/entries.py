@@ -159,18 +159,21 @@ _ADJUSTING = (
     ),
     adjusting_method(
         "best_form", "Best smoothing form", _best, _AICC,
-        "Of fifteen forms with and without trend and season, the one that describes the series best for its size.",
+        "Of fifteen ways to smooth level, trend and season, the one that has followed the series best; each constant "
+        "it needs counts against it.",
         constants=("alpha", "beta", "gamma", "phi"), min_periods=5,
     ),
     adjusting_method(
         "weighted_forms", "Weighted smoothing forms", _weighted, _AICC,
-        "Fifteen forms with and without trend and season, weighted by how well each describes the series for its size.",
+        "Level, trend and season are smoothed in fifteen ways; each counts by how closely it has followed the series, "
+        "less what it needs for it.",
         constants=("alpha", "beta", "gamma", "phi"), min_periods=5,
     ),
     adjusting_method(
         "temporal_hierarchy", "Temporal hierarchy of weighted forms", fit_temporal_hierarchy,
         "Athanasopoulos, Hyndman, Kourentzes & Petropoulos (2017)",
-        "Weighted smoothing forms of months, quarters, half-years and years, brought together so that they add up.",
+        "The series is smoothed at every step from the single period to the year, months, quarters and half-years "
+        "among them, and these forecasts are brought together so that they add up.",
         constants=("alpha", "beta", "gamma", "phi"), min_periods=5,
     ),
 )

@@ -32,5 +32,15 @@ def upper_first(text: str) -> str:
 
 
 def method_name(method: str) -> str:
-    """Return what readers see of a method; one that has no text keeps its own name."""
-    return english.TEXTS.get(f"method {method}", method.replace("_", " "))
+    """Return what readers see of a method, its twin on logarithms or with relative errors included.
+
+    One that has no text keeps its own name.
+    """
+    known = english.TEXTS.get(f"method {method}")
+    if known is not None:
+        return known
+    if method.startswith("log_"):
+        return say("method variant log", method=method_name(method.removeprefix("log_")))
+    if method.endswith("_relative"):
+        return say("method variant relative", method=method_name(method.removesuffix("_relative")))
+    return upper_first(method.replace("_", " "))

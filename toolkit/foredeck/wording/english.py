@@ -173,7 +173,7 @@ _SECTIONS = {
     "strength strong": "Strong", "strength some": "Moderate", "strength weak": "Weak",
     "strength unknown": "Cannot tell",
     "strength of": "({value} of 1)",
-    "method lead": "The method in plain words.",
+    "method lead": "The method in plain words.", "method why": "How the methods were weighted.",
     "numbers title": "Numbers", "numbers sub": "All actuals on record",
     "numbers sub cut": "Actuals of the last {count} years",
     "numbers repaired": "□ marks a period whose value was repaired for fitting; the raw value is shown.",
@@ -218,7 +218,8 @@ _GLOSSARY = {
 _METHODS = {
     "method naive": "Last value (naive)", "method seasonal_naive": "Same season last year (seasonal naive)",
     "method mean": "Mean of all periods", "method moving_average": "Moving average",
-    "method drift": "Last value with drift", "method ses": "Simple exponential smoothing",
+    "method drift": "Last value with drift", "method drift_with_season": "Drift with season",
+    "method ses": "Simple exponential smoothing",
     "method differenced_ses": "Smoothed changes", "method seasonally_differenced_ses": "Smoothed changes on "
         "last year",
     "method holt": "Holt’s linear trend", "method damped_holt": "Damped trend",
@@ -226,8 +227,18 @@ _METHODS = {
     "method damped_holt_winters_additive": "Damped Holt-Winters, additive season",
     "method holt_winters_multiplicative": "Holt-Winters, multiplicative season",
     "method damped_holt_winters_multiplicative": "Damped Holt-Winters, multiplicative season",
+    "method seasonal_ses_additive": "Simple smoothing, additive season",
+    "method seasonal_ses_multiplicative": "Simple smoothing, multiplicative season",
+    "method theta": "Theta", "method optimised_theta": "Optimised theta", "method dynamic_theta": "Dynamic theta",
+    "method averaged_damped": "Averaged damped trend", "method log_ses": "Simple exponential smoothing of logarithms",
+    "method best_form": "Best smoothing form", "method weighted_forms": "Weighted smoothing forms",
+    "method temporal_hierarchy": "Temporal hierarchy of weighted forms",
     "method croston": "Croston", "method sba": "Syntetos-Boylan approximation",
     "method tsb": "Teunter-Syntetos-Babai",
 }
 
-TEXTS: dict[str, str] = {**_NAMES, **_HEAD, **_SECTIONS, **_GLOSSARY, **_METHODS}
+_METHOD_VARIANTS = {"log": "{method} on logarithms", "relative": "{method}, relative errors"}
+
+TEXTS: dict[str, str] = {
+    **_NAMES, **_HEAD, **_SECTIONS, **_GLOSSARY, **_METHODS,
+    **{f"method variant {key}": text for key, text in _METHOD_VARIANTS.items()}}
