@@ -372,7 +372,7 @@ class _Round:
                 "baseline": float(part["baseline"].sum()) + to_date, "adjustment": float(part["adjustment"].sum()),
                 "adjusted": centre,
                 **{key: max(0.0, centre + z * wide) for key, z in _Z.items()}, "last_year": last_year,
-                "actual_to_date": to_date}
+                "actual_to_date": to_date, "past_bias": 0.01 * centre}
 
     def portfolio(self) -> dict[str, Any]:
         return {"style": "blend", "levels": [50, 90], "horizon": self.horizon, "n_series": 5,

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from foredeck.portfolio.joint_totals import total_range, window_errors
+from foredeck.portfolio.joint_totals import past_bias, total_range, window_errors
 
 SERIES, ORIGINS = 30, 400
 
@@ -57,3 +57,16 @@ def test_without_any_known_window_the_leads_are_taken_as_moving_together() -> No
     errors = window_errors(nothing, np.ones((2, 3)), np.arange(3), (80,), np.full((1, 2, 3), 1.5))
     assert errors.spread == pytest.approx([3.0, 3.0])
     assert total_range(errors, np.array([0])) == pytest.approx(np.full((1, 2), 4.5))
+
+
+def test_the_past_bias_of_a_total_is_the_sum_of_its_members_mean_errors_at_today_s_scale() -> None:
+    errors = np.array([[0.0, 1.0, 3.0], [0.0, -1.0, np.nan], [np.nan, np.nan, np.nan]])[:, :, None]
+    errors[:, 0] = np.nan  # offset 0 is now
+    found = window_errors(errors, np.array([[10.0], [100.0], [5.0]]), np.arange(1), (80,), np.ones((1, 2, 1)))
+    # with fewer than three origins nothing is pooled, and nothing is known of the bias
+    assert np.isnan(past_bias(found, np.arange(3)))
+    many = np.tile(errors, (1, 4, 1))
+    found = window_errors(many, np.array([[10.0], [100.0], [5.0]]), np.arange(1), (80,), np.ones((1, 2, 1)))
+    assert past_bias(found, np.array([0])) == pytest.approx(20.0)  # mean of 1 and 3, times 10
+    assert past_bias(found, np.arange(3)) == pytest.approx(20.0 - 100.0)
+    assert np.isnan(past_bias(found, np.array([2])))

@@ -32,7 +32,7 @@ _WHOLE = frozenset({"lead", "n", "n_periods"})
 _TRUTH = frozenset({"repaired", "eligible"})
 _NUMBER = frozenset({
     "value", "raw", "used", "baseline", "adjustment", "adjusted", "forecast", "actual", "benchmark", "weight",
-    "size", "mae", "bias", "rmse", "mase", "mase_scale", "last_year", "actual_to_date", "unit_value",
+    "size", "mae", "bias", "rmse", "mase", "mase_scale", "last_year", "actual_to_date", "past_bias", "unit_value",
     "trend_strength", "season_strength", "adi", "cv2"})
 
 

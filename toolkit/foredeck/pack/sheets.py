@@ -114,7 +114,7 @@ def sheets(view: RoundView, watch: pd.DataFrame, cautions: Sequence[str]) -> lis
     forecasts = forecast_table(view).rename(columns={**_heads(
         "series", "unit", "period", "lead", "baseline", "adjustment", "adjusted"), **ranges})
     totals = tables["totals"][["scope", "member", "window", "first", "last", "baseline", "adjustment",
-                               "adjusted", *range_columns(levels), "last_year", "actual_to_date"]]
+                               "adjusted", *range_columns(levels), "last_year", "actual_to_date", "past_bias"]]
     reliability = reliability_table(tables["reliability"], levels)
     inside = {f"inside_{level}": f"Inside range {level}" for level in levels}
     adjustments = tables["adjustments"][["series", "period", "baseline", "adjustment", "adjusted", "kind",

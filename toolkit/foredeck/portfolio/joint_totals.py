@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from foredeck.backtests.measures import mean_of
 from foredeck.portfolio.ranges import mean_correlation
 
 Array = NDArray[np.float64]
@@ -89,6 +90,28 @@ def total_range(errors: WindowErrors, members: NDArray[np.int64]) -> Array:
         trust = origins.sum() / (origins.sum() + PRIOR_ORIGINS)
         variance = max(variance + trust * (seen - own), 0.1 * variance)
     return np.asarray(errors.shape * np.sqrt(variance))
+
+
+def past_bias(errors: WindowErrors, members: NDArray[np.int64]) -> float:
+    """Mean past error of the total, at today's scale: above zero where such totals came out above their forecast.
+
+    Forecasts of a series aim at its middle, and members on logarithms lie under the mean; summed
+    over many series that may show, so it is measured.
+
+    Parameters
+    ----------
+    members : array of int
+        Rows of the series that are added.
+
+    Returns
+    -------
+    float; the series' unit; NaN where no error of any member is known
+    """
+    unit = errors.unit[members]
+    known = np.isfinite(unit).any(axis=1)
+    if not known.any():
+        return float("nan")
+    return float(errors.spread[members][known] @ mean_of(unit[known], axis=1))
 
 
 def _common_variance(spread: Array, common: float) -> float:

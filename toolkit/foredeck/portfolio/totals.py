@@ -14,7 +14,7 @@ from foredeck.portfolio.alone import Alone
 from foredeck.portfolio.applied import window_scale
 from foredeck.portfolio.count_ranges import Demand, demand_of, intermittent_at, sum_limits
 from foredeck.portfolio.fit import PortfolioFit
-from foredeck.portfolio.joint_totals import WindowErrors, total_range, window_errors
+from foredeck.portfolio.joint_totals import WindowErrors, past_bias, total_range, window_errors
 from foredeck.portfolio.procedure import Procedure
 
 Array = NDArray[np.float64]
@@ -60,8 +60,9 @@ def totals_table(alones: Sequence[Alone], procedures: Sequence[Procedure], fit: 
     -------
     DataFrame
         scope, member, window, first, last, baseline, adjustment, adjusted, lower_..,
-        upper_.. (of adjusted), last_year, actual_to_date. The year's figures include the
-        actuals to date; `last_year` is missing where a period of it is.
+        upper_.. (of adjusted), last_year, actual_to_date, past_bias. The year's figures include
+        the actuals to date; `last_year` is missing where a period of it is; `past_bias` is the
+        mean past error of such a total (`joint_totals.past_bias`).
     """
     names = [a.series.name for a in alones]
     base, final = (_matrix(adjusted, column, names, fit.horizon) for column in ("baseline", "adjusted"))
@@ -100,7 +101,7 @@ def _row(scope: str, member: str, rows: NDArray[np.int64], window: Window, closi
     return {"scope": scope, "member": member, "window": window.name, "first": period_name(first),
             "last": period_name(closing + 1 + int(window.leads[-1])), "baseline": baseline,
             "adjustment": adjusted - baseline, "adjusted": adjusted, **limits,
-            "last_year": float(last_year[rows].sum()), "actual_to_date": done}
+            "last_year": float(last_year[rows].sum()), "actual_to_date": done, "past_bias": past_bias(errors, rows)}
 
 
 def _scopes(alones: Sequence[Alone], groups: Sequence[str]) -> list[tuple[str, str, NDArray[np.int64]]]:
