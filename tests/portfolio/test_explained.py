@@ -71,13 +71,17 @@ def test_words_of_a_blend_say_who_leads_why_how_far_back_and_what_a_winner_s_lea
              "used": {"damped_holt": 9}, "half": 4, "edge_then": 0.14, "edge_after": 0.03,
              "edge_back": 12, "own_share": 0.3}
     assert fit_words("blend", 9, facts, MONTHS) == (
-        "The forecast is a blend of 2 methods, led by damped trend with 75%: in the backtests of this portfolio it "
+        "Over the portfolio the forecast is a blend of 2 methods, led by damped trend with 75%: in the backtests it "
         "missed 3% less than the methods do on average. Weights begin nearly equal; these backtests count 30% in them, "
         "and on each series the methods that missed less on it count more. The latest 4 months count for half of the "
         "level that a forecast starts from, all earlier ones for the other half. Why not the winner alone? On each "
         "series, the method that had missed least until 12 months ago was 14% ahead of the methods' average then, and "
         "3% ahead since: that is what a winner's lead is worth. Ranges come from the misses of past forecasts, pooled "
         "over 9 series.")
+    alone = fit_words("blend", 1, facts, MONTHS)
+    assert alone.startswith("The forecast is a blend of 2 methods, led by damped trend with 75%:")
+    assert "in them, and methods that missed less count more." in alone
+    assert "On this series, the method that had missed least" in alone
 
 
 @pytest.mark.parametrize(("after", "said"), [

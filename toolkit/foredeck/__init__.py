@@ -19,6 +19,7 @@ _HOMES = {
     "decompose": "foredeck.checks.decomposition",
     "difference": "foredeck.checks.differencing",
     "smooth": "foredeck.smoothing.catalogue",
+    "beside_statsmodels": "foredeck.smoothing.beside_statsmodels",
     "backtest": "foredeck.backtests.error_table",
     "study": "foredeck.portfolio.one_series",
     "open_ledger": "foredeck.ledger.store",

@@ -34,8 +34,8 @@ LABELS: dict[str, str] = {
     "season earlier": "earlier years", "season latest": "latest year",
     "weight lead": "How much each past {noun} counts", "weight rest": "in the level of “{method}”, out of 100; "
         "newest at the right.",
-    "weight rest blend": "in the level that the forecast starts from, out of 100: the methods that smooth one taken "
-        "together, newest at the right.",
+    "weight rest blend": "in the level that the forecast starts from, over its methods, out of 100; newest at "
+        "the right.",
     "weight alt": "Weights of past {plural}: the newest counts {first} of 100, the newest three {three}.",
     "weight three": "newest three: {value} of 100", "weight older": "all older: {value}",
     "members lead": "The methods that were blended, {unit}.",

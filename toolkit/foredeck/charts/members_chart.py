@@ -60,6 +60,7 @@ def members_figure(members: pd.DataFrame, adjusted: pd.DataFrame, *, closing: st
     equal = float(used["weight"].max() - used["weight"].min()) < 1e-9
     circles["marker"]["size"] = CIRCLE if equal else numbers(
         np.maximum(SMALLEST, LARGEST * np.sqrt(used["weight"] / used["weight"].max())))
+    circles["marker"]["opacity"] = 1  # plotly pales markers of several sizes
     data = [scatter(used["at"], used["forecast"], circles, said),
             scatter(ahead["at"], ahead["baseline"], role("forecast"), forecast)]
     first, last = int(ahead["at"].iloc[0]), int(ahead["at"].iloc[-1])

@@ -106,14 +106,14 @@ def fit_words(style: str, n_series: int, facts: Mapping[str, Any], period: tuple
     period : tuple of str
         Singular and plural of the frequency's noun.
     """
-    parts = [_blend_words(facts) if style == "blend" else _single_words(facts, n_series),
-             _half_words(facts["half"], period), _edge_words(facts, period)]
+    parts = [_blend_words(facts, n_series) if style == "blend" else _single_words(facts, n_series),
+             _half_words(facts["half"], period), _edge_words(facts, n_series, period)]
     series = "one series" if n_series == 1 else f"{n_series} series"
     parts.append(f"Ranges come from the misses of past forecasts, pooled over {series}.")
     return " ".join(part for part in parts if part)
 
 
-def _blend_words(facts: Mapping[str, Any]) -> str:
+def _blend_words(facts: Mapping[str, Any], n_series: int) -> str:
     weights, standing = facts["weights"], facts["standing"]
     if not weights:
         return "Every series is forecast by the plain mean of the methods for intermittent demand."
@@ -123,10 +123,11 @@ def _blend_words(facts: Mapping[str, Any]) -> str:
     lead = 1 - float(np.exp(standing[leader]))
     than = "as much as the methods do" if abs(lead) < 0.005 else \
         f"{percent(abs(lead))} {'less' if lead > 0 else 'more'} than the methods do"
-    return (f"The forecast is a blend of {len(weights)} methods, led by {named_in_a_sentence(leader)} with "
-            f"{percent(weights[leader])}: in the backtests of this portfolio it missed {than} on average. Weights "
-            f"begin nearly equal; these backtests count {percent(facts['own_share'])} in them, and on each series the "
-            f"methods that missed less on it count more.")
+    where, each = ("Over the portfolio the", "on each series the methods that missed less on it") if n_series > 1 else \
+        ("The", "methods that missed less")
+    return (f"{where} forecast is a blend of {len(weights)} methods, led by {named_in_a_sentence(leader)} with "
+            f"{percent(weights[leader])}: in the backtests it missed {than} on average. Weights begin nearly equal; "
+            f"these backtests count {percent(facts['own_share'])} in them, and {each} count more.")
 
 
 def _single_words(facts: Mapping[str, Any], n_series: int) -> str:
@@ -146,15 +147,15 @@ def _half_words(half: int | None, period: tuple[str, str]) -> str:
             f"for the other half.")
 
 
-def _edge_words(facts: Mapping[str, Any], period: tuple[str, str]) -> str:
+def _edge_words(facts: Mapping[str, Any], n_series: int, period: tuple[str, str]) -> str:
     then, after = facts["edge_then"], facts["edge_after"]
     if then is None:
         return ""
     since = f"{percent(abs(after))} {'ahead' if after > 0 else 'behind'} since" if abs(after) >= 0.005 \
         else "level with it since"
-    return (f"Why not the winner alone? On each series, the method that had missed least until {facts['edge_back']} "
-            f"{period[1]} ago was {percent(then)} ahead of the methods' average then, and {since}: that is what a "
-            f"winner's lead is worth.")
+    return (f"Why not the winner alone? On {'each' if n_series > 1 else 'this'} series, the method that had missed "
+            f"least until {facts['edge_back']} {period[1]} ago was {percent(then)} ahead of the methods' average then, "
+            f"and {since}: that is what a winner's lead is worth.")
 
 
 def named_in_a_sentence(method: str) -> str:

@@ -32,8 +32,8 @@ TEXTS: dict[str, str] = {
     "season": "Season", "trend": "Trend", "differencing": "Differencing", "demand": "Demand",
     "demand words": "One {noun} in {adi} has any.",
     "methods lead": "The methods, and what each was given to do.",
-    "methods rest": "Miss: mean absolute error one {noun} ahead in the backtest, {unit}. Parts rest on the misses at "
-        "every distance and on all series, not on this column alone.",
+    "methods rest": "Miss: mean absolute error one {noun} ahead in the backtest, {unit}.",
+    "methods weighed": " Parts rest on the misses at every distance and on all series, not on this column alone.",
     "method": "Method", "part": "Part of\nthe blend", "miss": "Miss", "why not": "Why not used",
     "no forecast": "Permitted, but the series is not forecast",
     "not weighted": "Permitted, but has no part in the forecast",

@@ -103,4 +103,5 @@ def _methods(study: Study, facts: SeriesFacts) -> str:
     return table(frame, [Column("method", text("method")), Column("part", text("part"), css="n"),
                          Column("miss", text("miss"), css="n"), Column("reason", text("why not"), css="txt")],
                  lead=text("methods lead"),
-                 rest=text("methods rest", noun=facts.frequency.noun, unit=study.unit), stack=True)
+                 rest=text("methods rest", noun=facts.frequency.noun, unit=study.unit) + (
+                     text("methods weighed") if len(set(part.values()) - {0.0}) > 1 else ""), stack=True)

@@ -172,8 +172,8 @@ _ADJUSTING = (
     adjusting_method(
         "temporal_hierarchy", "Temporal hierarchy of weighted forms", fit_temporal_hierarchy,
         "Athanasopoulos, Hyndman, Kourentzes & Petropoulos (2017)",
-        "The series is smoothed at every step from the single period to the year, months, quarters and half-years "
-        "among them, and these forecasts are brought together so that they add up.",
+        "The series is smoothed at every step from single periods to whole years, and these forecasts are brought "
+        "together so that they add up.",
         constants=("alpha", "beta", "gamma", "phi"), min_periods=5,
     ),
 )
