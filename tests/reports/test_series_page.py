@@ -120,7 +120,34 @@ def test_the_season_is_drawn_only_where_there_is_more_than_noise():
 
 
 def test_an_intermittent_series_is_told_by_how_often_there_is_demand():
-    assert "One month in 4.0 has any." in sections(sample_study(INTERMITTENT))["pattern"]
+    study = sample_study(INTERMITTENT)
+    strong = replace(study, info={**study.info, "season_strength": 0.9, "trend_strength": 0.9})
+    pattern = sections(strong)["pattern"]
+    assert "One month in 4.0 has any." in pattern
+    assert 'data-chart="season-data"' not in pattern
+    assert "Strong (0.90 of 1)" not in pattern
+
+
+def test_how_the_portfolio_weighted_the_methods_is_told_once_and_never_of_intermittent_demand():
+    study = sample_study(SEASONAL)
+    html = sections(study)
+    assert study.portfolio["words"] in html["pattern"]
+    assert study.portfolio["words"] not in html["made"]
+    assert "Style blend; 5 series; weighted as told under Pattern and method" in html["made"]
+    html = sections(sample_study(INTERMITTENT))
+    assert study.portfolio["words"] not in html["pattern"]
+    assert f"Style blend; 5 series. {study.portfolio['words']}" in html["made"]
+
+
+def test_the_methods_stand_by_their_part_and_only_unequal_parts_are_said_to_rest_on_all_misses():
+    study = sample_study(SEASONAL)
+    told = "Parts rest on the misses at every distance and on all series"
+    assert told not in sections(study)["pattern"]
+    leading = study.members["method"] == "seasonally_differenced_ses"
+    led = sections(replace(study, members=study.members.assign(weight=leading.map({True: 0.8, False: 0.2}))))["pattern"]
+    assert told in led
+    table = led[led.index(told):]
+    assert 0 < table.index("Smoothed changes on last year") < table.index("Holt-Winters, additive season")
 
 
 def test_a_section_shows_each_chart_as_an_output_of_its_own():
