@@ -361,3 +361,15 @@ def test_a_round_that_moved_nothing_says_so():
     view = sample_view()
     page = dataclasses.replace(cover(view), changes=changes(view.tables["adjusted"], view.tables["adjusted"]))
     assert text_of(page.moves()) == "No forecast for November has moved since round 2026-09."
+
+
+def test_groups_whose_sums_were_off_in_one_direction_are_named_and_others_are_not():
+    view = sample_view()
+    totals = view.tables["totals"].copy()
+    totals["past_bias"] = 0.01 * totals["baseline"]
+    assert "in one direction" not in text_of(cover(with_table(view, totals=totals)).totals())
+    off = (totals["scope"] == "depot") & (totals["member"] == "north")
+    totals.loc[off, "past_bias"] = -0.06 * totals.loc[off, "baseline"]
+    assert text_of(cover(with_table(view, totals=totals)).totals()).endswith(
+        "Past forecasts of such sums (Nov 2026 to Jan 2027 in this round) were off in one direction on average: "
+        "north 6% too high.")

@@ -30,7 +30,7 @@ from foredeck.reports.cover_facts import CoverFacts, cover_facts
 from foredeck.reports.cover_pictures import pictures
 from foredeck.reports.cover_record import cautions, made_facts, state_notes, state_words
 from foredeck.reports.cover_texts import one_or_many, say
-from foredeck.reports.cover_totals import totals_table, windows_table
+from foredeck.reports.cover_totals import bias_note, totals_table, windows_table
 from foredeck.reports.cover_words import answers, change_text, headline, moves, recorded, turned_out_sentences
 from foredeck.reports.fragments import Head, Section, paragraph
 from foredeck.reports.fragments import say as opening
@@ -98,7 +98,8 @@ class Cover:
         scopes = list(dict.fromkeys(total.scope for total in self.facts.totals if total.scope != "all"))
         sub = say("totals sub", groups=_listed(scopes)) if scopes else say("totals sub all")
         if self.facts.totals:
-            parts = [totals_table(self.facts), windows_table(self.facts, self.view.tables["totals"])]
+            totals = self.view.tables["totals"]
+            parts = [totals_table(self.facts), windows_table(self.facts, totals), bias_note(self.facts, totals)]
         elif self.facts.next.empty:
             parts = [opening(say("totals none"))]
         else:

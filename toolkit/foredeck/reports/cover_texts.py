@@ -84,6 +84,8 @@ _TOTALS = {
     "windows rest": "Several {plural} together are surer than each one: ranges do not add.",
     "window span": "{first} to {last}", "window year": "Year {span}",
     "window to": "To {last}", "window year to": "Year to {last}",
+    "bias note": "Past forecasts of such sums ({span} in this round) were off in one direction on average: {named}.",
+    "bias low": "{member} {share} too low", "bias high": "{member} {share} too high",
     "totals units": "The series count different things ({units}), so nothing is added up.",
     "totals none": "No series could be forecast, so there are no totals.",
     "totals added|1": "One series is new since last round and stands only in the forecast.",

@@ -23,6 +23,12 @@ from foredeck.wording.numbers import Rounding, percent, plain
 MOST_MEMBERS = 30
 """Members of one group that the table shows, the largest; the workbook holds them all."""
 
+BIASED = 0.03
+"""Share of a total by which past forecasts of it must have been off on average to be told."""
+
+MOST_BIASED = 4
+"""So many groups are named at most."""
+
 _REACHES = (0.05, 0.1, 0.2, 0.3, 0.5, 1.0)
 
 
@@ -130,6 +136,26 @@ def windows_table(facts: CoverFacts, totals: pd.DataFrame) -> str:
     columns = [Column(name, heads[name][0], as_is, heads[name][1]) for name in names]
     return table(frame_of(cells, names), columns, lead=say("windows caption", unit=facts.unit),
                  rest=say("windows rest", plural=facts.frequency.plural))
+
+
+def bias_note(facts: CoverFacts, totals: pd.DataFrame) -> str:
+    """Groups whose sums came out clearly above or below their past forecasts; empty where none did.
+
+    Judged over the shortest window of several periods, a step of 1 % from `BIASED` on.
+    """
+    rows = totals[(totals["first"] != totals["last"]) & ~totals["scope"].isin(["all", "series"])]
+    if facts.overall is None or rows.empty:
+        return ""
+    rows = rows[rows["window"] == rows["window"].iloc[0]]
+    shares = (rows["past_bias"] / rows["baseline"]).where(rows["baseline"] > 0)
+    found = rows.assign(share=shares)[shares.abs() >= BIASED]
+    found = found.sort_values("share", key=lambda s: -s.abs(), kind="stable").head(MOST_BIASED)
+    if found.empty:
+        return ""
+    named = "; ".join(say("bias low" if row["share"] > 0 else "bias high", member=row["member"],
+                          share=percent(abs(row["share"]))) for row in found.to_dict("records"))
+    span = window_name(str(found["first"].iloc[0]), str(found["last"].iloc[0]), facts.frequency, year=False)
+    return paragraph(say("bias note", named=named, span=span), "note")
 
 
 def _window(facts: CoverFacts, row: dict[Any, Any]) -> dict[str, Any]:
