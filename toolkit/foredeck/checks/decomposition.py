@@ -11,8 +11,9 @@ from numpy.typing import ArrayLike
 from statsmodels.nonparametric.smoothers_lowess import lowess
 from statsmodels.tsa.seasonal import STL
 
-from foredeck.checks.expectation import Array
+from foredeck.checks.expectation import LONGEST, Array
 from foredeck.checks.limits import strength_limits
+from foredeck.checks.loess import SEASONAL_WINDOW, stl
 from foredeck.checks.repairs import repaired
 from foredeck.errors import ShapeError
 from foredeck.intake.history import SeriesHistory
@@ -24,7 +25,6 @@ if TYPE_CHECKING:
 STRONG = 0.64
 """Strength from which a pattern is called strong; also the customary bar for a seasonal difference."""
 
-_SEASONAL_WINDOW = 13
 _FEWEST = 5
 
 
@@ -150,7 +150,10 @@ def trend_and_season(values: Array, season_length: int) -> tuple[Array, Array]:
     """Return trend and season of values without gaps; season all zero where it cannot be told."""
     n = values.size
     if season_length > 1 and n >= 2 * season_length:
-        found = STL(values, period=season_length, seasonal=_SEASONAL_WINDOW).fit()
+        if n <= LONGEST:
+            return stl(values, season_length)
+        # The matrices of a longer history would take more memory than their time is worth.
+        found = STL(values, period=season_length, seasonal=SEASONAL_WINDOW).fit()
         return np.asarray(found.trend), np.asarray(found.seasonal)
     if n < _FEWEST:
         return np.full(n, values.mean() if n else 0.0), np.zeros(n)
@@ -171,11 +174,12 @@ def strength(rest: Array, part: Array) -> float:
     ----------
     Wang, Smith & Hyndman (2006); Hyndman & Athanasopoulos, 3rd ed., section 4.3.
     """
-    whole = float(np.var(part + rest))
+    both = part + rest
+    whole = float(both.var())
     # Differences in the last binary digits of a constant series are no pattern.
-    if whole <= 1e-20 * float(np.max(np.abs(part + rest), initial=1.0)) ** 2:
+    if whole <= 1e-20 * float(np.abs(both).max(initial=1.0)) ** 2:
         return 0.0
-    return max(0.0, 1.0 - float(np.var(rest)) / whole)
+    return max(0.0, 1.0 - float(rest.var()) / whole)
 
 
 def strength_text(strength: float) -> str:

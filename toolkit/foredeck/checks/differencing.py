@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import pandas as pd
 from numpy.typing import ArrayLike
-from statsmodels.stats.diagnostic import acorr_ljungbox
+from scipy.special import chdtrc
 from statsmodels.tsa.adfvalues import mackinnoncrit
 
 from foredeck.checks.decomposition import STRONG, decompose, values_of
@@ -37,16 +37,21 @@ class Differencing:
         Differences from one period to the next, 0 to 2; None where it cannot be told.
     seasonal : int or None
         Differences to the same period a year before, 0 or 1; None where it cannot be told.
-    tests : DataFrame
-        Columns test, of (what was tested), statistic, limit, lags, says.
+    figures : tuple of tuples
+        The rows of `tests`.
     words : str
         The advice in a sentence.
     """
 
     ordinary: int | None
     seasonal: int | None
-    tests: pd.DataFrame
+    figures: tuple[tuple[Any, ...], ...]
     words: str
+
+    @property
+    def tests(self) -> pd.DataFrame:
+        """One row a test; columns test, of (what was tested), statistic, limit, lags, says."""
+        return pd.DataFrame(list(self.figures), columns=["test", "of", "statistic", "limit", "lags", "says"])
 
     def _repr_html_(self) -> str:
         rows = "".join(f"<tr><th scope='row'>{escape(str(r.test))}</th><td>{escape(str(r.of))}</td>"
@@ -94,11 +99,11 @@ def difference(series_or_values: SeriesHistory | pd.Series[Any] | ArrayLike,
     adjusted = np.where(np.isfinite(adjusted), adjusted, parts.trend)
     n = adjusted.size
     if is_intermittent(parts.values):
-        return Differencing(0, 0, _table([]),
+        return Differencing(0, 0, (),
                             "Demand is intermittent: differences say nothing here and none is taken.")
     if n < max(_FEWEST_SEASONS * length, _FEWEST_PERIODS):
         short = f"under three full years ({n} periods)" if length > 1 else f"only {n} periods"
-        return Differencing(None, None, _table([]), f"Cannot tell: with {short} the tests decide nothing.")
+        return Differencing(None, None, (), f"Cannot tell: with {short} the tests decide nothing.")
     tests = []
     seasonal = 0
     if length > 1:
@@ -115,7 +120,7 @@ def difference(series_or_values: SeriesHistory | pd.Series[Any] | ArrayLike,
             break
         ordinary, x = ordinary + 1, np.diff(x)
     tests += _informing(adjusted, x, ordinary, length)
-    return Differencing(ordinary, seasonal, _table(tests), _advice(ordinary, seasonal, length))
+    return Differencing(ordinary, seasonal, tuple(tests), _advice(ordinary, seasonal, length))
 
 
 def kpss(values: Array) -> tuple[float, int]:
@@ -179,6 +184,27 @@ def dickey_fuller(values: Array) -> tuple[float, int]:
     return (float(coefficients[0] / np.sqrt(spread)) if spread > 0 else 0.0), lags
 
 
+def ljung_box(values: Array, lags: int) -> float:
+    """Probability that values without links between neighbours show correlations as large as these.
+
+    Parameters
+    ----------
+    values : array, shape (n,), n > lags
+        Without NaN and not constant.
+    lags : int
+        Autocorrelations up to this lag are taken together.
+
+    References
+    ----------
+    Ljung & Box (1978), Biometrika 65, 297-303, equation 1.5.
+    """
+    n = values.size
+    e = values - values.mean()
+    r = np.array([e[lag:] @ e[:-lag] for lag in range(1, lags + 1)]) / (e @ e)
+    statistic = n * (n + 2.0) * float((r ** 2 / (n - np.arange(1, lags + 1))).sum())
+    return float(chdtrc(lags, statistic))
+
+
 def _informing(adjusted: Array, differenced: Array, ordinary: int, length: int) -> list[tuple[Any, ...]]:
     """Augmented Dickey-Fuller on the adjusted values, Ljung-Box on the differenced ones."""
     tests: list[tuple[Any, ...]] = []
@@ -189,15 +215,10 @@ def _informing(adjusted: Array, differenced: Array, ordinary: int, length: int) 
                       "the level holds" if statistic < limit else "the level may wander"))
     if np.ptp(differenced) > 1e-9 * np.abs(adjusted).max():
         lags = min(2 * length if length > 1 else 10, differenced.size // 5)
-        found = acorr_ljungbox(differenced, lags=[lags])
-        p = float(found["lb_pvalue"].iloc[0])
+        p = ljung_box(differenced, lags)
         tests.append(("Ljung-Box (probability)", _times(ordinary), p, 0.05, lags,
                       "neighbours go together" if p < 0.05 else "no link between neighbours shows"))
     return tests
-
-
-def _table(tests: list[tuple[Any, ...]]) -> pd.DataFrame:
-    return pd.DataFrame(tests, columns=["test", "of", "statistic", "limit", "lags", "says"])
 
 
 def _times(ordinary: int) -> str:

@@ -8,7 +8,7 @@ from typing import Literal
 
 import numpy as np
 
-from foredeck.checks.decomposition import decompose, strength_text, taken_apart
+from foredeck.checks.decomposition import decompose, strength, strength_text, taken_apart, trend_and_season
 from foredeck.checks.expectation import Array
 from foredeck.checks.intermittence import (
     ADI_LIMIT,
@@ -18,6 +18,7 @@ from foredeck.checks.intermittence import (
     is_intermittent,
     squared_variation,
 )
+from foredeck.checks.limits import strength_limits
 
 
 @dataclass(frozen=True)
@@ -115,7 +116,7 @@ def pattern(values: Array, season_length: int, *, used: Array | None = None) -> 
     """
     parts = decompose(values, season_length) if used is None else taken_apart(values, used, season_length)
     adi, cv2 = average_demand_interval(parts.values), squared_variation(parts.values)
-    rare = is_intermittent(parts.values)
+    rare = adi >= ADI_LIMIT
     quadrant = demand_class(adi, cv2)
     if rare:
         varies = "much" if quadrant == "lumpy" else "little"
@@ -127,6 +128,22 @@ def pattern(values: Array, season_length: int, *, used: Array | None = None) -> 
                        words)
     return Pattern(parts.has_trend, parts.has_season, False, adi, cv2, quadrant, parts.trend_strength,
                    parts.season_strength, parts.words)
+
+
+def shows_season(used: Array, season_length: int) -> bool:
+    """Whether there is a season: `pattern(used, season_length, used=used).season`, and nothing beside it.
+
+    Parameters
+    ----------
+    used : array, shape (n,); the series' unit
+        Repaired values, without NaN.
+    season_length : int
+        Periods a year (1, 4, 12, 52).
+    """
+    if season_length == 1 or used.size < 2 * season_length or is_intermittent(used):
+        return False
+    trend, season = trend_and_season(used, season_length)
+    return strength(used - trend - season, season) > strength_limits(season_length, used.size)[1]
 
 
 def ineligible_reason(requirements: Requirements, values: Array, season_length: int, interval: float) -> str:

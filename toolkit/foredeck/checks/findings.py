@@ -29,6 +29,7 @@ FAULT_CODES = ("duplicate", "not_a_number", "gap", "impossible_sign", "incomplet
 QUERY_CODES = ("outlier", "level_shift", "change_of_unit", "zero_run", "repeated_constant")
 """Needs a person."""
 
+_NUMBERS = ("raw", "used")
 # A closing period at seven tenths of what was expected, or above, is low but may well be complete.
 _COMPLETE = 0.7
 
@@ -76,7 +77,8 @@ def find(series: SeriesHistory, closing: pd.Period, nonnegative: bool = True) ->
         is one row at its first period. `used` is the value methods are fitted to. Reading
         faults of the series are included as they were handed in.
     """
-    series = series.up_to(closing)
+    if not series.faults.empty or (len(series) and series.periods[-1] > closing):
+        series = series.up_to(closing)
     known = np.flatnonzero(np.isfinite(series.values))
     end = int(known[-1]) + 1 if known.size else 0
     values = series.values[:end]
@@ -94,13 +96,17 @@ def find(series: SeriesHistory, closing: pd.Period, nonnegative: bool = True) ->
 @lru_cache(maxsize=1)
 def _no_findings() -> pd.DataFrame:
     columns = [*FINDING_COLUMNS, "raw_text"]
-    return pd.DataFrame({c: pd.Series(dtype=float if c in ("raw", "used") else "str") for c in columns})
+    return pd.DataFrame({c: pd.Series(dtype=float if c in _NUMBERS else "str") for c in columns})
 
 
 def _table(rows: list[dict[str, object]]) -> pd.DataFrame:
     """Rows as a table; most series have none, so that the empty table is made once."""
     empty = _no_findings()
-    return pd.DataFrame(rows, columns=empty.columns).astype(empty.dtypes.to_dict()) if rows else empty.copy()
+    if not rows:
+        return empty.copy()
+    # Column by column: a table made of rows would have to look at every cell for its type.
+    kinds = {str(c): float if c in _NUMBERS else object for c in empty.columns}
+    return pd.DataFrame({c: np.array([row[c] for row in rows], dtype=kind) for c, kind in kinds.items()})
 
 
 def _reading_faults(place: _Place) -> list[dict[str, object]]:

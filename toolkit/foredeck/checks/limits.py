@@ -7,6 +7,8 @@ tests/checks/clean_series.py, 600 series of each kind and length (a quarter of t
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 
 _Table = dict[int, tuple[tuple[int, float, float], ...]]
@@ -123,7 +125,7 @@ def query_limits(season_length: int, n_periods: int) -> tuple[float, float]:
     spike, step : float
         Standard deviations.
     """
-    return _looked_up(_QUERIES, season_length, n_periods)
+    return _looked_up(True, season_length, n_periods)
 
 
 def strength_limits(season_length: int, n_periods: int) -> tuple[float, float]:
@@ -131,10 +133,12 @@ def strength_limits(season_length: int, n_periods: int) -> tuple[float, float]:
 
     Parameters as in `query_limits`.
     """
-    return _looked_up(_STRENGTHS, season_length, n_periods)
+    return _looked_up(False, season_length, n_periods)
 
 
-def _looked_up(table: _Table, season_length: int, n_periods: int) -> tuple[float, float]:
+@lru_cache(maxsize=4096)
+def _looked_up(queries: bool, season_length: int, n_periods: int) -> tuple[float, float]:
+    table = _QUERIES if queries else _STRENGTHS
     known = max(m for m in table if m <= season_length)
     periods, first, second = np.array(table[known]).T
     n = n_periods * known / season_length if known > 1 else n_periods

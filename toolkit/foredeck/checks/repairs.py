@@ -6,7 +6,8 @@ raw values are kept, shown, and scored against.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import Literal
 
 import numpy as np
@@ -79,10 +80,18 @@ def list_repairs(values: Array, season_length: int, nonnegative: bool = True) ->
 def repairs_and_screening(values: Array, season_length: int,
                           nonnegative: bool = True) -> tuple[Array, list[Repair], Screening]:
     """Return the repaired values, the list of repairs, and the screening that they rest on."""
-    raw = np.asarray(values, dtype=np.float64)
+    raw = np.ascontiguousarray(values, dtype=np.float64)
     if raw.ndim != 1:
         raise ShapeError(f"the values have {raw.ndim} dimensions", allowed="one series, shape (n,)",
                          do="hand in one series at a time", shape=raw.shape)
+    used, repairs, screening = _worked_out(raw.tobytes(), season_length, nonnegative)
+    return used.copy(), list(repairs), replace(screening, expected=screening.expected.copy())
+
+
+# The same values are asked about several times over: to be fitted, to be told about, to be differenced.
+@lru_cache(maxsize=128)
+def _worked_out(values: bytes, season_length: int, nonnegative: bool) -> tuple[Array, tuple[Repair, ...], Screening]:
+    raw = np.frombuffer(values)
     possible = np.where(np.isfinite(raw) & ~(nonnegative & (raw < 0)), raw, np.nan)
     missing = ~np.isfinite(possible)
     # A run of zeros or of one value is somebody's question, not a measure of the other periods.
@@ -99,11 +108,12 @@ def repairs_and_screening(values: Array, season_length: int,
             continue
         used[s.position] = s.raw / s.factor if s.code == "change_of_unit" else s.expected
         repairs.append(Repair(s.position, s.raw, 0.0, s.code))
-    used[missing] = _fills(used, season_length, screening)[missing]
+    if missing.any():
+        used[missing] = _fills(used, season_length, screening)[missing]
     if nonnegative:
         used = np.maximum(used, 0.0)
     done = [Repair(r.position, r.raw, float(used[r.position]), r.code) for r in repairs]
-    return used, sorted(done, key=lambda r: r.position), screening
+    return used, tuple(sorted(done, key=lambda r: r.position)), screening
 
 
 def _fills(values: Array, season_length: int, screening: Screening) -> Array:

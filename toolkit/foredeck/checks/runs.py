@@ -50,7 +50,7 @@ def zero_runs(values: Array, season_length: int) -> list[Run]:
     list of Run, by position
     """
     found: list[Run] = []
-    if bool((values < 0.0).any()):
+    if not (values == 0.0).any() or (values < 0.0).any():
         return found
     runs = [run for run in _equal_runs(values) if run.value == 0.0]
     outside = np.isfinite(values)
@@ -113,10 +113,9 @@ def constant_runs(values: Array) -> list[Run]:
 
 def _equal_runs(values: Array) -> list[Run]:
     """Every run of at least two equal values."""
-    if values.size < 2:
+    ties = np.flatnonzero(values[1:] == values[:-1])
+    if ties.size == 0:
         return []
-    breaks = np.flatnonzero(values[1:] != values[:-1]) + 1
-    starts = np.concatenate([[0], breaks])
-    lasts = np.concatenate([breaks, [values.size]]) - 1
-    long = lasts > starts
-    return [Run(int(a), int(b), float(values[a])) for a, b in zip(starts[long], lasts[long], strict=True)]
+    breaks = np.flatnonzero(np.diff(ties) > 1) + 1
+    firsts, lasts = ties[np.append(0, breaks)], ties[np.append(breaks, ties.size) - 1] + 1
+    return [Run(int(a), int(b), float(values[a])) for a, b in zip(firsts, lasts, strict=True)]

@@ -183,10 +183,11 @@ def _search(values: Array, season_length: int, found: _Found) -> tuple[_Found, E
 
 def _fit(values: Array, season_length: int, missing: NDArray[np.intp], found: _Found,
          like: Expectation | None = None) -> Expectation | None:
-    left_out = np.union1d(missing, np.array(found.spikes, dtype=np.intp))
-    speaks = np.ones(values.size, dtype=bool)
-    speaks[left_out] = False
-    found.steps = _borne_out(sorted(found.steps), speaks)
+    left_out = np.array(sorted({*missing.tolist(), *found.spikes}), dtype=np.intp)
+    if found.steps:
+        speaks = np.ones(values.size, dtype=bool)
+        speaks[left_out] = False
+        found.steps = _borne_out(sorted(found.steps), speaks)
     return fit(values, season_length, left_out, np.array(found.steps, dtype=np.intp), like)
 
 
