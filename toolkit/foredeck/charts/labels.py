@@ -37,7 +37,7 @@ LABELS: dict[str, str] = {
     "weight rest blend": "in the level that the forecast starts from, over its methods, out of 100; newest at "
         "the right.",
     "weight alt": "Weights of past {plural}: the newest counts {first} of 100, the newest three {three}.",
-    "weight three": "newest three: {value} of 100", "weight older": "all older: {value}",
+    "weight three": "newest three: {value} of 100", "weight older": "older than shown: {value}",
     "members lead": "The methods that were blended, {unit}.",
     "members rest": "Diamonds: the forecast. Circles: each of its {n} methods.",
     "members sizes": " A larger circle counts more.", "each method": "each method",

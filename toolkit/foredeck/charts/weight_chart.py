@@ -89,9 +89,10 @@ def weights_figure(levels: Sequence[tuple[float, float]], n: int, *, method: str
              "marker": {"color": filled, "line": {"color": colour("ink"), "width": 1.25}}}]
     axis = value_axis(parts, room=0.25)
     three = float(parts[:3].sum())
-    notes = [note(at[-1] - 0.4, axis.high, f"{label('weight three', value=number(three, decimals))}; "
-                  f"{label('weight older', value=number(100 - float(parts.sum()), decimals))}", "ink2", yanchor="top")]
-    margin = {"l": axis.margin, "r": 20, "t": 12, "b": 40}
+    counted = f"{label('weight three', value=number(three, decimals))}; " + label(
+        "weight older", value=number(100 - float(parts.sum()), decimals))
+    notes = [note(at[-1] - 0.4, axis.high, counted, "ink2", yanchor="bottom")]
+    margin = {"l": axis.margin, "r": 20, "t": 24, "b": 40}
     layout = {"height": 230, "margin": margin, "annotations": notes, "yaxis": axis.layout(),
               "xaxis": {"range": [at[-1] - 0.8, 0.6], **time.ticks(at[-1], 0, 480)}}
     narrow = {"margin": {**margin, "r": 8}, "xaxis": time.ticks(at[-1], 0, 300)}
