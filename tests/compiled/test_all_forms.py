@@ -7,9 +7,10 @@ import pytest
 
 from foredeck.compiled.recursions import ADDITIVE, MULTIPLICATIVE, NO_SEASON
 from foredeck.compiled.search import all_forms, mix
-from foredeck.smoothing.weighted_forms import CODES, FORMS
+from foredeck.smoothing.weighted_forms import FORMS
 from references import plain_smoothing as plain
 
+CODES = np.array([(form.error, form.trend + form.damped, form.season) for form in FORMS])
 FREE = np.full(4, np.nan)
 KINDS = {NO_SEASON: "none", ADDITIVE: "additive", MULTIPLICATIVE: "multiplicative"}
 

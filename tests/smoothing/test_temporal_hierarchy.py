@@ -7,8 +7,9 @@ import pickle
 import numpy as np
 import pytest
 
-from foredeck.smoothing.temporal_hierarchy import BLOCKS, fit_temporal_hierarchy, projection
-from foredeck.smoothing.weighted_forms import fit_weighted_forms
+from foredeck.compiled.recursions import ADDITIVE, MULTIPLICATIVE
+from foredeck.smoothing.temporal_hierarchy import BLOCKS, SOBER, fit_temporal_hierarchy, projection
+from foredeck.smoothing.weighted_forms import fit_forms, fit_weighted_forms
 
 
 @pytest.fixture(scope="module")
@@ -44,7 +45,7 @@ def test_the_forecast_is_that_of_the_levels_counted_back_from_the_end_and_reconc
         count = months.size // block
         means = np.array([months[months.size - (count - i) * block :][:block].mean() for i in range(count)])
         assert means[-1] == pytest.approx(months[-block:].mean())
-        ahead = fit_weighted_forms(means, 12 // block).path(24 // block)
+        ahead = fit_forms(means, 12 // block, forms=SOBER).path(24 // block)
         sums.append(ahead.reshape(2, -1) * block)
     expected = np.concatenate([projection() @ np.concatenate([level[year] for level in sums]) for year in (0, 1)])
     np.testing.assert_allclose(path, expected[:18], rtol=1e-10)
@@ -56,11 +57,18 @@ def test_a_shorter_horizon_is_the_beginning_of_a_longer_one(months):
 
 
 def test_one_step_forecasts_are_those_of_the_weighted_forms_of_the_months(months):
-    fitted, plain = fit_temporal_hierarchy(months, 12), fit_weighted_forms(months, 12)
-    np.testing.assert_array_equal(fitted.fitted, plain.fitted)
-    assert fitted.constants == plain.constants
-    assert fitted.n_parameters == plain.n_parameters
+    fitted, plain = fit_temporal_hierarchy(months, 12), fit_forms(months, 12, forms=SOBER)
+    np.testing.assert_array_equal(fitted.fitted, plain.weights @ plain.fitted)
+    assert fitted.constants == {"alpha": plain.weights @ plain.constants[:, 0]}
+    assert set(fitted.final) <= {form.name for form in SOBER}
     assert np.abs(fitted.path(12) / plain.path(12) - 1).max() > 1e-4
+
+
+def test_with_a_season_the_levels_have_no_undamped_trend_and_one_error_for_each_kind_of_season():
+    seasonal = [form for form in SOBER if form.season]
+    assert len(SOBER) == 9
+    assert all(form.damped or not form.trend for form in seasonal)
+    assert {(form.season, form.error) for form in seasonal} == {(ADDITIVE, ADDITIVE), (MULTIPLICATIVE, MULTIPLICATIVE)}
 
 
 @pytest.mark.parametrize(("n", "m"), [(47, 12), (71, 4), (71, 1), (120, 52)])

@@ -4,9 +4,9 @@ The forms are those of Hyndman, Koehler, Ord & Snyder (2008) that are numericall
 (section 2.5): additive and multiplicative errors, no, linear and damped trends, no,
 additive and multiplicative seasons, without the additive error on a multiplicative
 season. They are named by error, trend and season: `AAdN` has an additive error, a damped
-trend and no season. Above 24 periods a season only forms without season are had, fitted to the values as
-handed in: the states of a season of 52 weeks would outnumber the data, so whoever knows
-the season takes it out before.
+trend and no season. Above 24 periods a season only forms without season are had, fitted
+to the values as handed in: the states of a season of 52 weeks would outnumber the data, so
+whoever knows the season takes it out before.
 """
 
 from __future__ import annotations
@@ -32,40 +32,36 @@ LONGEST_SEASON = 24
 _STARTS, _TOLERANCE = 1, 1e-4
 _LETTERS = {NO_SEASON: "N", ADDITIVE: "A", MULTIPLICATIVE: "M"}
 _TRENDS = ("N", "A", "Ad")
-CODES: NDArray[np.int64] = np.array([
-    (error, trend, season)
+FORMS: tuple[Form, ...] = tuple(
+    Form(f"{_LETTERS[error]}{_TRENDS[trend]}{_LETTERS[season]}",
+         f"Smoothing form {_LETTERS[error]}{_TRENDS[trend]}{_LETTERS[season]}", trend > 0, trend == 2, season, error)
     for season, error, trend in product((NO_SEASON, ADDITIVE, MULTIPLICATIVE), (ADDITIVE, MULTIPLICATIVE), (0, 1, 2))
     if (error, season) != (ADDITIVE, MULTIPLICATIVE)
-], dtype=np.int64)
-"""Error, trend (0 none, 1 linear, 2 damped) and season of the fifteen forms, without season first."""
-
-FORMS: tuple[Form, ...] = tuple(
-    Form(name, f"Smoothing form {name}", trend > 0, trend == 2, season, error)
-    for error, trend, season in CODES.tolist()
-    for name in [_LETTERS[error] + _TRENDS[trend] + _LETTERS[season]]
 )
-"""The same forms by name."""
+"""The fifteen forms, without season first."""
 
 
 @dataclass(frozen=True, eq=False)
 class FormFits:
-    """The fifteen forms fitted to one series.
+    """Several forms fitted to one series.
 
     Attributes
     ----------
+    forms : tuple of Form, length F
     n, m : int
         Number of values; season length, 1 where only forms without season were had.
-    fitted : array, shape (15, n)
+    fitted : array, shape (F, n)
         One-step forecasts.
-    weights : array, shape (15,)
+    weights : array, shape (F,)
         Akaike weights (Burnham & Anderson 2002, section 2.9.1), which add up to 1; all 0
         when the series is too short for any form.
-    constants, states, sigma2, counts : arrays, shapes (15, 4), (15, m + 2), (15,), (15,)
+    constants, states, sigma2, counts : arrays, shapes (F, 4), (F, m + 2), (F,), (F,)
         alpha, beta, gamma, phi; the states after the last period; the residual variance,
         of relative errors where the error is multiplicative; the number of constants and
         starting states estimated.
     """
 
+    forms: tuple[Form, ...]
     n: int
     m: int
     fitted: Array
@@ -78,32 +74,43 @@ class FormFits:
     def path(self, horizon: int, *, lowest: float = -np.inf) -> Array:
         """Weighted mean of the forms' forecasts, each at least `lowest`."""
         path = np.empty(horizon)
-        mix(self.n, self.m, CODES, self.weights, self.constants, self.states, lowest, path)
+        mix(self.n, self.m, _codes(self.forms), self.weights, self.constants, self.states, lowest, path)
         return path
 
 
-def fit_forms(values: Array, season_length: int, constants: Mapping[str, float] | None = None) -> FormFits:
-    """Fit the fifteen forms to one series, with the named constants held in all forms that have them."""
-    m = int(season_length) if season_length <= LONGEST_SEASON else 1
+def fit_forms(
+    values: Array, season_length: int, constants: Mapping[str, float] | None = None,
+    forms: tuple[Form, ...] = FORMS,
+) -> FormFits:
+    """Fit forms to one series, with the named constants held in all forms that have them."""
+    m = season_length if season_length <= LONGEST_SEASON else 1
     fixed = {name: float(value) for name, value in (constants or {}).items() if name in CONSTANTS}
     held = np.array([fixed.get(name, np.nan) for name in CONSTANTS])
-    n, size = values.size, len(FORMS)
+    n, size = values.size, len(forms)
     fitted, aicc = np.zeros((size, n)), np.empty(size)
     used, states, sigma2 = np.zeros((size, 4)), np.zeros((size, m + 2)), np.full(size, np.nan)
     own = np.array(values, dtype=np.float64)  # a writable row: for any other the compiler would begin anew
-    all_forms(own, m, CODES, held, _STARTS, _TOLERANCE, np.empty((size, 0)), fitted, aicc, used, states, sigma2)
-    counts = _counts(tuple(fixed), m)
+    all_forms(own, m, _codes(forms), held, _STARTS, _TOLERANCE, np.empty((size, 0)), fitted, aicc, used, states, sigma2)
     best = aicc.min()
     weights = np.exp(-0.5 * (aicc - best)) if np.isfinite(best) else np.zeros(size)
-    return FormFits(n, m, fitted, weights / max(weights.sum(), 1e-300), used, states, sigma2, counts)
+    return FormFits(
+        forms, n, m, fitted, weights / max(weights.sum(), 1e-300), used, states, sigma2,
+        _counts(forms, tuple(fixed), m),
+    )
 
 
 @lru_cache(maxsize=64)
-def _counts(fixed: tuple[str, ...], m: int) -> NDArray[np.int64]:
+def _counts(forms: tuple[Form, ...], fixed: tuple[str, ...], m: int) -> NDArray[np.int64]:
     """Constants and starting states that each form estimates."""
     return np.array([
-        sum(name not in fixed for name in form.constants) + form.trend + (m if form.season else 1) for form in FORMS
+        sum(name not in fixed for name in form.constants) + form.trend + (m if form.season else 1) for form in forms
     ])
+
+
+@lru_cache(maxsize=64)
+def _codes(forms: tuple[Form, ...]) -> NDArray[np.int64]:
+    """Error, trend (0 none, 1 linear, 2 damped) and season of each form, as the compiled search reads them."""
+    return np.array([(form.error, form.trend + form.damped, form.season) for form in forms], dtype=np.int64)
 
 
 def fit_best_form(values: Array, season_length: int, constants: Mapping[str, float] | None = None) -> Fitted:
@@ -194,7 +201,7 @@ def fit_weighted_forms(values: Array, season_length: int, constants: Mapping[str
 
 def weights_by_name(fits: FormFits) -> dict[str, float]:
     """Weights of the forms that were had."""
-    return {form.name: float(weight) for form, weight in zip(FORMS, fits.weights, strict=True) if weight > 0}
+    return {form.name: float(weight) for form, weight in zip(fits.forms, fits.weights, strict=True) if weight > 0}
 
 
 def _simple(
