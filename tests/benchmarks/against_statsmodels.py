@@ -30,7 +30,7 @@ from statsmodels.tsa.exponential_smoothing.ets import ETSModel
 from foredeck.compiled.recursions import ADDITIVE, MULTIPLICATIVE, NO_SEASON
 from foredeck.compiled.search import all_forms
 from foredeck.smoothing.state_space import CONSTANTS, Form, fit_form
-from foredeck.smoothing.weighted_forms import _STARTS, _TOLERANCE, CODES, FORMS
+from foredeck.smoothing.weighted_forms import _STARTS, _TOLERANCE, FORMS
 
 COMPARED = ("ANN", "AAdN", "AAA", "AAdA", "MNM", "MAdM")
 NAMED = {ADDITIVE: "add", MULTIPLICATIVE: "mul", NO_SEASON: None}
@@ -48,7 +48,7 @@ def deviance(values: Array, fitted: Array, form: Form) -> float:
 def in_bulk(values: Array, form: Form) -> Array:
     """One-step forecasts of the compiled search."""
     n, m = values.size, MONTHS if form.season else 1
-    code = CODES[FORMS.index(form)][None]
+    code = np.array([(form.error, form.trend + form.damped, form.season)])
     fitted, rest = np.zeros((1, n)), (np.empty(1), np.zeros((1, 4)), np.zeros((1, m + 2)), np.empty(1))
     all_forms(values, m, code, np.full(len(CONSTANTS), np.nan), _STARTS, _TOLERANCE, np.empty((1, 0)), fitted, *rest)
     return fitted[0]
