@@ -11,9 +11,8 @@ from numpy.typing import ArrayLike
 from statsmodels.nonparametric.smoothers_lowess import lowess
 from statsmodels.tsa.seasonal import STL
 
-from foredeck.checks.expectation import LONGEST, Array
+from foredeck.checks.expectation import Array
 from foredeck.checks.limits import strength_limits
-from foredeck.checks.loess import SEASONAL_WINDOW, stl
 from foredeck.checks.repairs import repaired
 from foredeck.errors import ShapeError
 from foredeck.intake.history import SeriesHistory
@@ -25,6 +24,7 @@ if TYPE_CHECKING:
 STRONG = 0.64
 """Strength from which a pattern is called strong; also the customary bar for a seasonal difference."""
 
+_SEASONAL_WINDOW = 13
 _FEWEST = 5
 
 
@@ -150,10 +150,7 @@ def trend_and_season(values: Array, season_length: int) -> tuple[Array, Array]:
     """Return trend and season of values without gaps; season all zero where it cannot be told."""
     n = values.size
     if season_length > 1 and n >= 2 * season_length:
-        if n <= LONGEST:
-            return stl(values, season_length)
-        # The matrices of a longer history would take more memory than their time is worth.
-        found = STL(values, period=season_length, seasonal=SEASONAL_WINDOW).fit()
+        found = STL(values, period=season_length, seasonal=_SEASONAL_WINDOW).fit()
         return np.asarray(found.trend), np.asarray(found.seasonal)
     if n < _FEWEST:
         return np.full(n, values.mean() if n else 0.0), np.zeros(n)
