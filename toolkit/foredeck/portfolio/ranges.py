@@ -132,6 +132,10 @@ def age_weights(ages: Array) -> Array:
     return np.asarray(0.5 ** (ages / HALF_LIFE))
 
 
+MOST_ERRORS = 30_000
+"""Errors that one multiplier rests on at most; of more, those of evenly spread series are as good."""
+
+
 def _known(standardised: Array, offset: int, lead: int) -> tuple[Array, Array, Array]:
     """Errors at a lead, its neighbours included, that were known `offset` periods before the closing.
 
@@ -140,6 +144,7 @@ def _known(standardised: Array, offset: int, lead: int) -> tuple[Array, Array, A
     errors, how much each counts, and how much each origin of the lead itself counts
     """
     pooled, weights, origins = [], [], np.zeros(0)
+    standardised = standardised[:: 1 + 3 * standardised.shape[0] * (standardised.shape[1] - offset) // MOST_ERRORS]
     for near in (lead - 1, lead, lead + 1):
         if not 0 <= near < standardised.shape[2]:
             continue
@@ -182,7 +187,7 @@ def mean_correlation(rows: Array) -> float:
 def both_sides(pooled: Array, weight: Array, shares: Array) -> Array:
     """Mean of symmetric and asymmetric quantiles, shape (levels, 2): lower and upper, both positive."""
     symmetric = weighted_quantiles(np.abs(pooled), weight, shares)
-    lower, upper = (weighted_quantiles(pooled, weight, at) for at in ((1 - shares) / 2, (1 + shares) / 2))
+    lower, upper = weighted_quantiles(pooled, weight, np.stack([1 - shares, 1 + shares]) / 2)
     return np.maximum(np.stack([symmetric - lower, symmetric + upper], axis=1) / 2, 0.0)
 
 
@@ -197,6 +202,6 @@ def weighted_quantiles(values: Array, weight: Array, shares: Array) -> Array:
     order = np.argsort(values, kind="stable")
     sorted_values, counts = values[order], weight[order]
     if len(values) == 1:
-        return np.full(len(shares), sorted_values[0])
+        return np.full(np.shape(shares), sorted_values[0])
     reached = np.cumsum(counts) - counts
     return np.asarray(np.interp(shares, reached / reached[-1], sorted_values))
