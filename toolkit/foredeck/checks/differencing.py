@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import pandas as pd
 from numpy.typing import ArrayLike
-from scipy.special import chdtrc
+from statsmodels.stats.diagnostic import acorr_ljungbox
 from statsmodels.tsa.adfvalues import mackinnoncrit
 
 from foredeck.checks.decomposition import STRONG, decompose, values_of
@@ -184,27 +184,6 @@ def dickey_fuller(values: Array) -> tuple[float, int]:
     return (float(coefficients[0] / np.sqrt(spread)) if spread > 0 else 0.0), lags
 
 
-def ljung_box(values: Array, lags: int) -> float:
-    """Probability that values without links between neighbours show correlations as large as these.
-
-    Parameters
-    ----------
-    values : array, shape (n,), n > lags
-        Without NaN and not constant.
-    lags : int
-        Autocorrelations up to this lag are taken together.
-
-    References
-    ----------
-    Ljung & Box (1978), Biometrika 65, 297-303, equation 1.5.
-    """
-    n = values.size
-    e = values - values.mean()
-    r = np.array([e[lag:] @ e[:-lag] for lag in range(1, lags + 1)]) / (e @ e)
-    statistic = n * (n + 2.0) * float((r ** 2 / (n - np.arange(1, lags + 1))).sum())
-    return float(chdtrc(lags, statistic))
-
-
 def _informing(adjusted: Array, differenced: Array, ordinary: int, length: int) -> list[tuple[Any, ...]]:
     """Augmented Dickey-Fuller on the adjusted values, Ljung-Box on the differenced ones."""
     tests: list[tuple[Any, ...]] = []
@@ -215,7 +194,7 @@ def _informing(adjusted: Array, differenced: Array, ordinary: int, length: int) 
                       "the level holds" if statistic < limit else "the level may wander"))
     if np.ptp(differenced) > 1e-9 * np.abs(adjusted).max():
         lags = min(2 * length if length > 1 else 10, differenced.size // 5)
-        p = ljung_box(differenced, lags)
+        p = float(acorr_ljungbox(differenced, lags=[lags])["lb_pvalue"].iloc[0])
         tests.append(("Ljung-Box (probability)", _times(ordinary), p, 0.05, lags,
                       "neighbours go together" if p < 0.05 else "no link between neighbours shows"))
     return tests

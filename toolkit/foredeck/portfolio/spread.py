@@ -10,6 +10,7 @@ import os
 from collections.abc import Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
+from contextlib import contextmanager
 from functools import partial
 from multiprocessing import get_context
 
@@ -20,6 +21,8 @@ from foredeck.portfolio.alone import Alone, ForecastOptions, examine
 
 FEW = 40
 """Up to so many series the work is done before other processes would have started."""
+
+_THREADS = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
 
 CHUNK = 8
 """Series handed over at once: enough to make the way worth it, few enough to see progress."""
@@ -47,7 +50,7 @@ def examine_each(series: Sequence[SeriesHistory], closing: pd.Period, options: F
     done = 0
     if count > 1 and len(series) > FEW:
         try:
-            with ProcessPoolExecutor(count, mp_context=get_context("spawn")) as pool:
+            with single_threads(), ProcessPoolExecutor(count, mp_context=get_context("spawn")) as pool:
                 for found in pool.map(one, series, chunksize=CHUNK):
                     yield found
                     done += 1
@@ -55,6 +58,21 @@ def examine_each(series: Sequence[SeriesHistory], closing: pd.Period, options: F
             pass  # a worker was killed, for want of memory perhaps: the rest is done here, one by one
     for rest in series[done:]:
         yield one(rest)
+
+
+@contextmanager
+def single_threads() -> Iterator[None]:
+    """Processes started inside do their linear algebra on one thread each: more would fight over the processors."""
+    before = {name: os.environ.get(name) for name in _THREADS}
+    os.environ.update(dict.fromkeys(_THREADS, "1"))
+    try:
+        yield
+    finally:
+        for name, value in before.items():
+            if value is None:
+                del os.environ[name]
+            else:
+                os.environ[name] = value
 
 
 def attempt(series: SeriesHistory, closing: pd.Period, options: ForecastOptions) -> Alone | Exception:
