@@ -315,6 +315,7 @@ class _Round:
                 "n_periods": n,
                 "trend_strength": 0.21 if seasonal else 0.86 if name == TREND else np.nan,
                 "season_strength": 0.93 if seasonal else 0.08 if name == TREND else np.nan,
+                "has_trend": name == TREND, "has_season": seasonal,
                 "adi": n / max(1, int((values > 0).sum())), "cv2": 0.09 if intermittent else 0.02,
                 "demand_class": "intermittent" if intermittent else "smooth",
                 "pattern_words": self._pattern(name),

@@ -69,7 +69,7 @@ def test_facts_name_the_weights_now_and_who_leads_where() -> None:
 def test_words_of_a_blend_say_who_leads_why_how_far_back_and_what_a_winner_s_lead_is_worth() -> None:
     facts = {"weights": {"ses": 0.25, "damped_holt": 0.75}, "standing": {"ses": 0.02, "damped_holt": -0.03},
              "used": {"damped_holt": 9}, "half": 4, "edge_then": 0.14, "edge_after": 0.03,
-             "edge_back": 12, "own_share": 0.3}
+             "edge_back": 12, "own_share": 0.3, "intermittent": 2}
     assert fit_words("blend", 9, facts, MONTHS) == (
         "Over the portfolio the forecast is a blend of 2 methods, led by damped trend with 75%: in the backtests it "
         "missed 3% less than the methods do on average. Weights begin nearly equal; these backtests count 30% in them, "
@@ -77,8 +77,9 @@ def test_words_of_a_blend_say_who_leads_why_how_far_back_and_what_a_winner_s_lea
         "level that a forecast starts from, all earlier ones for the other half. Why not the winner alone? On each "
         "series, the method that had missed least until 12 months ago was 14% ahead of the methods' average then, and "
         "3% ahead since: that is what a winner's lead is worth. Ranges come from the misses of past forecasts, pooled "
-        "over 9 series.")
-    alone = fit_words("blend", 1, facts, MONTHS)
+        "over 7 series. Ranges of intermittent series come from how often demand came, and how large it was.")
+    alone = fit_words("blend", 1, {**facts, "intermittent": 0}, MONTHS)
+    assert alone.endswith("Ranges come from the misses of past forecasts, pooled over one series.")
     assert alone.startswith("The forecast is a blend of 2 methods, led by damped trend with 75%:")
     assert "in them, and methods that missed less count more." in alone
     assert "On this series, the method that had missed least" in alone
@@ -91,7 +92,7 @@ def test_words_of_a_blend_say_who_leads_why_how_far_back_and_what_a_winner_s_lea
 ])
 def test_a_winner_that_fell_behind_or_level_is_said_to_have_done_so(after: float, said: str) -> None:
     facts = {"weights": {"ses": 1.0}, "standing": {"ses": 0.0}, "used": {"ses": 1}, "half": None, "edge_then": 0.2,
-             "edge_after": after, "edge_back": 8, "own_share": 0.3}
+             "edge_after": after, "edge_back": 8, "own_share": 0.3, "intermittent": 0}
     words = fit_words("blend", 9, facts, ("quarter", "quarters"))
     assert said in words
     assert "until 8 quarters ago" in words
@@ -130,7 +131,7 @@ def test_a_plain_mean_is_called_one_and_says_what_it_is_for() -> None:
 
 def test_words_of_the_single_style_count_the_series_of_each_method() -> None:
     facts = {"weights": {}, "standing": {}, "used": {"ses": 2, "damped_holt": 5, "holt": 1, "croston": 1}, "half": 1,
-             "edge_then": None, "edge_after": None, "own_share": 0.1}
+             "edge_then": None, "edge_after": None, "own_share": 0.1, "intermittent": 1}
     words = fit_words("single", 9, facts, MONTHS)
     assert "damped trend on 5, simple exponential smoothing on 2, Holt's linear trend on 1, and others of 9" in words
     assert "The latest month counts for half or more of the level" in words

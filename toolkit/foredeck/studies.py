@@ -91,6 +91,10 @@ class Study:
                    horizon=int(portfolio["horizon"]), levels=tuple(portfolio["levels"]), info=info,
                    portfolio=portfolio, made=made, previous=previous, **cut)
 
+    def __repr__(self) -> str:
+        """One line; the tables are attributes."""
+        return f"Study({self.name!r}, round={self.round!r}, state={self.state!r}, closing={self.closing!r})"
+
     def _repr_html_(self) -> str:
         level = max(self.levels)
         rows = "".join(

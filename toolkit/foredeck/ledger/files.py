@@ -29,7 +29,7 @@ TEMPORARY = ".writing"
 _OURS = re.compile(r"^\.?[a-z_]+-[0-9a-f]{12}\.parquet(\.writing)?$")
 
 _WHOLE = frozenset({"lead", "n", "n_periods"})
-_TRUTH = frozenset({"repaired", "eligible"})
+_TRUTH = frozenset({"repaired", "eligible", "has_trend", "has_season"})
 _NUMBER = frozenset({
     "value", "raw", "used", "baseline", "adjustment", "adjusted", "forecast", "actual", "benchmark", "weight",
     "size", "mae", "bias", "rmse", "mase", "mase_scale", "last_year", "actual_to_date", "past_bias", "unit_value",

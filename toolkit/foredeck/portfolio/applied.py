@@ -119,7 +119,8 @@ def _series_row(alone: Alone, procedure: Procedure, names: list[str]) -> pd.Data
         "status": "forecast", "reason": "", "first_period": names[0],
         "last_period": names[int(np.flatnonzero(np.isfinite(alone.raw))[-1])],
         "n_periods": int(np.isfinite(alone.raw).sum()), "trend_strength": seen.trend_strength,
-        "season_strength": seen.season_strength, "adi": seen.adi, "cv2": seen.cv2,
+        "season_strength": seen.season_strength,
+        "has_trend": seen.trend, "has_season": seen.season, "adi": seen.adi, "cv2": seen.cv2,
         "demand_class": seen.demand_class, "pattern_words": seen.words,
         "differencing_words": alone.differencing_words, "method": next(iter(used)) if len(used) == 1 else "blend",
         "method_words": method_words(used), "mase_scale": alone.mase_scale}])

@@ -30,7 +30,8 @@ def fit_facts(alones: Sequence[Alone], procedures: Sequence[Procedure], learned:
         of the weight; None where no method has an alpha), `edge_then` and `edge_after`
         (by what share the method that had done best on a series up to `edge_back` periods
         ago missed less than the methods on average, up to then and since; None where not
-        known), `own_share` (how far the portfolio's own backtests count beside the prior).
+        known), `own_share` (how far the portfolio's own backtests count beside the prior),
+        `intermittent` (series with the demand-rate family).
     """
     speaking = [name for name, weight in zip(learned.methods, learned.weights[0], strict=True) if weight > 0]
     at = {name: place for place, name in enumerate(learned.methods)}
@@ -43,7 +44,8 @@ def fit_facts(alones: Sequence[Alone], procedures: Sequence[Procedure], learned:
         "used": {name: led.count(name) for name in learned.methods if name in led},
         "half": half_weight(alones, procedures), "edge_then": then, "edge_after": after,
         "edge_back": YEAR_OF_ORIGINS[alones[0].series.season_length],
-        "own_share": smooth / (smooth + PRIOR_SERIES)}
+        "own_share": smooth / (smooth + PRIOR_SERIES),
+        "intermittent": len(alones) - smooth}
 
 
 def half_weight(alones: Sequence[Alone], procedures: Sequence[Procedure]) -> int | None:
@@ -108,8 +110,7 @@ def fit_words(style: str, n_series: int, facts: Mapping[str, Any], period: tuple
     """
     parts = [_blend_words(facts, n_series) if style == "blend" else _single_words(facts, n_series),
              _half_words(facts["half"], period), _edge_words(facts, n_series, period)]
-    series = "one series" if n_series == 1 else f"{n_series} series"
-    parts.append(f"Ranges come from the misses of past forecasts, pooled over {series}.")
+    parts.append(_range_words(n_series, facts["intermittent"]))
     return " ".join(part for part in parts if part)
 
 
@@ -156,6 +157,16 @@ def _edge_words(facts: Mapping[str, Any], n_series: int, period: tuple[str, str]
     return (f"Why not the winner alone? On {'each' if n_series > 1 else 'this'} series, the method that had missed "
             f"least until {facts['edge_back']} {period[1]} ago was {percent(then)} ahead of the methods' average then, "
             f"and {since}: that is what a winner's lead is worth.")
+
+
+def _range_words(n_series: int, intermittent: int) -> str:
+    own = "Ranges of intermittent series come from how often demand came, and how large it was."
+    if intermittent == n_series:
+        return own
+    ordinary = n_series - intermittent
+    series = "one series" if ordinary == 1 else f"{ordinary} series"
+    pooled = f"Ranges come from the misses of past forecasts, pooled over {series}."
+    return f"{pooled} {own}" if intermittent else pooled
 
 
 def named_in_a_sentence(method: str) -> str:

@@ -132,7 +132,7 @@ def age_weights(ages: Array) -> Array:
     return np.asarray(0.5 ** (ages / HALF_LIFE))
 
 
-MOST_ERRORS = 30_000
+MOST_ERRORS = 100_000
 """Errors that one multiplier rests on at most; of more, those of evenly spread series are as good."""
 
 

@@ -21,9 +21,6 @@ from foredeck.wording.facts import SeriesFacts, facts_of
 from foredeck.wording.numbers import Rounding, percent, plain
 from foredeck.wording.sections import range_record_words, strength_words, trust_words
 
-WEAK = 0.3
-"""Season strength below which a picture of the season would be a picture of noise."""
-
 
 def trust(study: Study) -> Section | None:
     """Show how far forecasts of this series have missed; None where it is not forecast."""
@@ -64,10 +61,9 @@ def weighting_words(study: Study) -> str:
 
 def _season(study: Study) -> Part:
     """Draw the season where there is more of it than noise shows; intermittent demand has none that could be seen."""
-    strength = study.info.get("season_strength")
-    if facts_of(study).intermittent:
+    if facts_of(study).intermittent or not study.info.get("has_season"):
         return ""
-    return (season_chart(study) if strength is not None and float(strength) >= WEAK else None) or ""
+    return season_chart(study) or ""
 
 
 def _strengths(study: Study, facts: SeriesFacts) -> list[tuple[str, str]]:
@@ -75,7 +71,8 @@ def _strengths(study: Study, facts: SeriesFacts) -> list[tuple[str, str]]:
     for key in () if facts.intermittent else ("season", "trend"):
         value = study.info.get(f"{key}_strength")
         strength = math.nan if value is None else float(value)
-        told = strength_words(strength)
+        found = study.info.get(f"has_{key}") or not math.isfinite(strength)
+        told = strength_words(strength) if found else words("strength none")
         items.append((text(key), f"{told} {words('strength of', value=f'{strength:.2f}')}"
                       if math.isfinite(strength) else told))
     if facts.intermittent:

@@ -110,7 +110,8 @@ def made_with(history: History) -> dict[str, Any]:
 
 
 SERIES_COLUMNS = ("series", "unit", "unit_value", "status", "reason", "first_period", "last_period", "n_periods",
-                  "trend_strength", "season_strength", "adi", "cv2", "demand_class", "pattern_words",
+                  "trend_strength", "season_strength", "has_trend", "has_season",
+                  "adi", "cv2", "demand_class", "pattern_words",
                   "differencing_words", "method", "method_words", "mase_scale")
 """Columns of the table `series` beside the groups."""
 

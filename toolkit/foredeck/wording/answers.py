@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from foredeck.wording.catalogue import say, upper_first
+from foredeck.wording.catalogue import lower_first, say, upper_first
 from foredeck.wording.dates import long_name, near_name
 from foredeck.wording.facts import SeriesFacts, is_known
 from foredeck.wording.levels import benchmark_name, level_name, outside_words
@@ -97,6 +97,11 @@ def _how_sure(facts: SeriesFacts) -> Answer:
     inner = is_known(ahead.inner_lower)
     low, high = (ahead.inner_lower, ahead.inner_upper) if inner else (ahead.lower, ahead.upper)
     outside, several = outside_words(facts.outer, facts.frequency)
+    if facts.intermittent:
+        text = say("how sure intermittent many" if several else "how sure intermittent", outside=lower_first(outside),
+                   high=facts.edges.text(ahead.upper))
+        return Answer(say("ask how sure"), facts.edges.span(ahead.lower, ahead.upper), "",
+                      say("how sure lead", level=upper_first(level_name(facts.outer))), text)
     return Answer(say("ask how sure"), facts.edges.span(ahead.lower, ahead.upper), "",
                   say("how sure lead", level=upper_first(level_name(facts.outer))),
                   say("how sure many" if several else "how sure", outside=outside, low=facts.edges.text(low),

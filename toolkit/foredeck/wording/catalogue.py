@@ -31,6 +31,11 @@ def upper_first(text: str) -> str:
     return text[:1].upper() + text[1:]
 
 
+def lower_first(text: str) -> str:
+    """Begin with a small letter what stands within a sentence."""
+    return text[:1].lower() + text[1:]
+
+
 def method_name(method: str) -> str:
     """Return what readers see of a method, its twin on logarithms or with relative errors included.
 

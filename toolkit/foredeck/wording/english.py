@@ -56,6 +56,10 @@ _HEAD = {
                 "more, near {low}.",
     "how sure many": "{outside} fall outside. If running short costs more, plan near {high}; if having too much "
                      "costs more, near {low}.",
+    "how sure intermittent": "At most {outside} comes out higher. If running short costs much, plan near {high}: the "
+                             "average says little of a single order.",
+    "how sure intermittent many": "At most {outside} come out higher. If running short costs much, plan near {high}: "
+                                  "the average says little of a single order.",
     "how sure none": "No range",
     "how sure none text": "Too little history to say how far forecasts of this series miss.",
     "year more": "{share} more", "year less": "{share} less", "year same": "The same",
@@ -171,6 +175,7 @@ _SECTIONS = {
     "pattern title": "Pattern and method", "pattern sub": "What the history holds, and how the forecast uses it",
     "pattern unknown": "The pattern cannot be told yet.",
     "strength strong": "Strong", "strength some": "Moderate", "strength weak": "Weak",
+    "strength none": "No more than noise",
     "strength unknown": "Cannot tell",
     "strength of": "({value} of 1)",
     "method lead": "The method in plain words.", "method why": "How the methods were weighted.",
