@@ -110,3 +110,14 @@ def test_own_errors_compare_methods_in_the_cells_that_all_of_them_have() -> None
     np.testing.assert_allclose(found[-1], np.nanmean(later, axis=(1, 2)))
     np.testing.assert_array_equal(alone.cube.actual, hard)
     assert np.isnan(found[0]).all()
+
+
+def test_origins_at_which_a_series_was_intermittent_teach_nothing_about_the_others() -> None:
+    options = ForecastOptions(horizon=2, methods=("ses", "holt", "damped_holt"))
+    ordinary, changed = alone_of(1, horizon=2), alone_of(2, horizon=2)
+    changed.pool[:, :12] = False  # its demand-rate family spoke then
+    before = learn_from([ordinary, changed], options)
+    changed.cube.forecasts[:, :12] += 500.0
+    after = learn_from([ordinary, changed], options)
+    np.testing.assert_array_equal(after.weights, before.weights)
+    np.testing.assert_array_equal(after.standing, before.standing)

@@ -73,7 +73,7 @@ def learn_from(alones: Sequence[Alone], options: ForecastOptions) -> Learned:
     Parameters
     ----------
     alones : sequence of Alone, at least one
-        Intermittent series have a family of their own and are left out.
+        Origins at which a series was intermittent are left out: it had another family then.
     options : ForecastOptions
     """
     methods, season_length = alones[0].cube.methods, alones[0].series.season_length
@@ -82,8 +82,7 @@ def learn_from(alones: Sequence[Alone], options: ForecastOptions) -> Learned:
     begin = start[speaking]
     offsets = origin_count(season_length, options.horizon) + 1
     weights, standing = np.zeros((offsets, len(methods))), np.full((offsets, len(methods)), np.nan)
-    smooth = [alone for alone in alones if not alone.pattern.intermittent]
-    cells = [_cells(alone, speaking) for alone in smooth]
+    cells = [_cells(alone, speaking) for alone in alones]
     for offset in range(offsets):
         known = [errors[ready >= offset] for errors, ready in cells]
         known = [errors for errors in known if len(errors)]
@@ -124,7 +123,8 @@ def _cells(alone: Alone, speaking: NDArray[np.int64]) -> tuple[Array, NDArray[np
     cube = alone.cube
     errors = cube.errors[speaking] / alone.naive_scale[:-1, None]
     ready = alone.offsets[:, None] - np.arange(1, errors.shape[2] + 1)[None, :]
-    there = np.isfinite(errors).any(axis=0)
+    spoke: Flags = np.asarray(alone.pool[speaking, :-1].any(axis=0))
+    there = np.isfinite(errors).any(axis=0) & spoke[:, None]
     found = errors[:, there].T
     # where a method cannot be had it neither gains nor loses: it is given the mean of the others
     found = np.where(np.isfinite(found), found, mean_of(found, axis=1)[:, None])
@@ -236,15 +236,15 @@ def own_errors(alone: Alone) -> Array:
     Returns
     -------
     array, shape (origins + 1, methods); the series' unit
-        From the cells that all methods of the last pool share; NaN where none is known.
+        From the cells that all methods of the pool then share; NaN where none is known.
     """
     cube = alone.cube
     power = np.array([2.0 if METHODS[name].family == "demand rate" else 1.0 for name in cube.methods])
     sizes = np.abs(cube.errors) ** power[:, None, None]
-    shared = np.isfinite(sizes[alone.pool[:, -1]]).all(axis=0)
+    there = np.isfinite(sizes)
     found = np.full((cube.known.size + 1, len(cube.methods)), np.nan)
     for row, known in enumerate((*cube.known, len(alone.raw))):
-        cells = shared & cube.known_cells(int(known))
+        cells = there[alone.pool[:, row]].all(axis=0) & cube.known_cells(int(known))
         if cells.any():
             found[row] = mean_of(sizes[:, cells], axis=1) ** (1 / power)
     return found
