@@ -6,7 +6,8 @@
 
 The series of a frequency are one portfolio; with `--alone` each is a portfolio of its own. With
 `--shift` the last H training values are judged (H = 6, 8, 18, 8 for yearly, quarterly, monthly, other)
-and what precedes them is learned from. sMAPE and MASE are means over leads, then over series; the scale
+and what precedes them is learned from; series with under two seasons and one period left, or under nine
+periods, are left out. sMAPE and MASE are means over leads, then over series; the scale
 of MASE comes from what was learned from. Below the procedure, from the same pass: the plain mean of its
 five members, and each usual method alone (over the series for which it can be had).
 """
@@ -83,7 +84,7 @@ def main() -> None:
             continue
         began, chosen, left_out = time.perf_counter(), drawn(series, asked.series, asked.seed), 0
         if asked.shift:
-            left_out, chosen = len(chosen), shifted(chosen, HORIZONS[freq])
+            left_out, chosen = len(chosen), shifted(chosen, freq)
             left_out -= len(chosen)
         options = ForecastOptions(horizon=HORIZONS[freq], style=asked.style)
         passed = pass_through(chosen, SPACING[freq], options, each_alone=asked.alone)

@@ -35,8 +35,8 @@ HORIZONS = {"YEARLY": 6, "QUARTERLY": 8, "MONTHLY": 18, "OTHER": 8}
 SPACING = {"YEARLY": Frequency.YEARLY, "QUARTERLY": Frequency.QUARTERLY, "MONTHLY": Frequency.MONTHLY,
            "OTHER": Frequency.YEARLY}
 LEVELS = (50, 80, 90, 95)
-FEWEST = 9
-"""Shifted series with fewer periods left to learn from are left out."""
+FEWEST = {"YEARLY": 9, "QUARTERLY": 9, "MONTHLY": 25, "OTHER": 9}
+"""Shifted series with fewer periods left to learn from are left out: two seasons and one period, at least nine."""
 WORKERS = 2
 
 
@@ -72,10 +72,11 @@ def read_open_series(path: str) -> dict[str, list[OpenSeries]]:
     return found
 
 
-def shifted(series: Sequence[OpenSeries], horizon: int) -> list[OpenSeries]:
-    """The last `horizon` training values as the test, what precedes them as the training; short ones left out."""
+def shifted(series: Sequence[OpenSeries], freq: str) -> list[OpenSeries]:
+    """The last training values, one horizon, as the test, what precedes them as the training; short ones left out."""
+    horizon = HORIZONS[freq]
     moved = [replace(one, train=one.train[:-horizon], test=one.train[-horizon:]) for one in series]
-    return [one for one in moved if len(one.train) >= FEWEST]
+    return [one for one in moved if len(one.train) >= FEWEST[freq]]
 
 
 def drawn(series: Sequence[OpenSeries], count: int | None, seed: int) -> list[OpenSeries]:
