@@ -18,7 +18,7 @@ from numpy.typing import NDArray
 from foredeck.backtests.error_table import Cube, build_cube
 from foredeck.backtests.measures import mase_scale
 from foredeck.checks.differencing import difference
-from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern
+from foredeck.checks.eligibility import Pattern, ineligible_reason, pattern, shows_season
 from foredeck.checks.findings import find
 from foredeck.checks.intermittence import ADI_LIMIT, average_demand_interval
 from foredeck.checks.repairs import repaired
@@ -158,7 +158,7 @@ def examine(series: SeriesHistory, closing: pd.Period, options: ForecastOptions)
                       lambda name, seen: not then.reason(name, len(seen)), options.constants)
     lowest = 0.0 if options.nonnegative else -np.inf
     cube = replace(cube, forecasts=np.maximum(cube.forecasts, lowest))
-    now = then.pattern(len(raw))
+    now = pattern(used, m, used=used)
     reasons = {name: then.reason(name, len(raw)) for name in methods}
     fits = [None if reasons[name] else fit(name, used, m, options.constants) for name in methods]
     members = np.array([np.full(horizon, np.nan) if f is None else f.forecast(horizon) for f in fits])
@@ -212,8 +212,7 @@ class _Then:
         # every origin needs these several times: each is made once, from what was known then
         self.repaired: Callable[[int], Array] = cache(
             lambda known: repaired(raw[:known], season_length, nonnegative=nonnegative))
-        self.pattern: Callable[[int], Pattern] = cache(
-            lambda known: pattern(self.repaired(known), season_length, used=self.repaired(known)))
+        self.season: Callable[[int], bool] = cache(lambda known: shows_season(self.repaired(known), season_length))
         self.interval: Callable[[int], float] = cache(lambda known: average_demand_interval(self.repaired(known)))
 
     def intermittent(self, known: int) -> bool:
@@ -237,9 +236,9 @@ class _Then:
             return "is a benchmark, there to be beaten"
         if self.intermittent(known):
             return "" if entry.family == "demand rate" else "is not for intermittent demand"
-        if options.methods and entry.season == "repeated" and not self.pattern(known).season:
+        if options.methods and entry.season == "repeated" and not self.season(known):
             return "repeats a season, and this series shows none"
-        if options.methods and entry.season == "none" and self.pattern(known).season:
+        if options.methods and entry.season == "none" and self.season(known):
             return "knows no season, and this series has one"
         if known < 2 * self.season_length and entry.endless_trend:
             return "would carry a trend on that may be the season: fewer than two years are known"
