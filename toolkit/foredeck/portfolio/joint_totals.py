@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from foredeck.backtests.measures import mean_of
-from foredeck.portfolio.ranges import mean_correlation
+from foredeck.portfolio.ranges import both_sides, mean_correlation
 
 Array = NDArray[np.float64]
 
@@ -64,7 +64,8 @@ def window_errors(standardised: Array, scale: Array, leads: NDArray[np.int64], l
         return WindowErrors(spread=size, unit=np.full_like(relative, np.nan), shape=shape, common=0.0)
     pooled = float(np.sqrt((known ** 2).mean()))
     unit = relative / pooled
-    return WindowErrors(spread=pooled * size, unit=unit, shape=_shape(known / pooled, levels),
+    shape = both_sides(known / pooled, np.ones_like(known), np.array(levels) / 100)
+    return WindowErrors(spread=pooled * size, unit=unit, shape=shape,
                         common=mean_correlation(_complete(unit)))
 
 
@@ -121,12 +122,3 @@ def _common_variance(spread: Array, common: float) -> float:
 def _complete(unit: Array) -> Array:
     rows = unit[np.isfinite(unit).any(axis=1)]
     return rows[:, np.isfinite(rows).all(axis=0)]
-
-
-def _shape(unit: Array, levels: tuple[int, ...]) -> Array:
-    out = np.empty((len(levels), 2))
-    for at, level in enumerate(levels):
-        symmetric = np.quantile(np.abs(unit), level / 100)
-        lower, upper = np.quantile(unit, [(1 - level / 100) / 2, (1 + level / 100) / 2])
-        out[at] = (symmetric - lower) / 2, (symmetric + upper) / 2
-    return np.maximum(out, 0.0)
