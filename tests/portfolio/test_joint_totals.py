@@ -70,3 +70,9 @@ def test_the_past_bias_of_a_total_is_the_sum_of_its_members_mean_errors_at_today
     assert past_bias(found, np.array([0])) == pytest.approx(20.0)  # mean of 1 and 3, times 10
     assert past_bias(found, np.arange(3)) == pytest.approx(20.0 - 100.0)
     assert np.isnan(past_bias(found, np.array([2])))
+
+
+def test_past_forecasts_without_any_error_leave_the_plain_multipliers() -> None:
+    perfect = np.zeros((2, 9, 3))
+    errors = window_errors(perfect, np.ones((2, 3)), np.arange(3), (80,), np.full((1, 2, 3), 0.5))
+    assert total_range(errors, np.array([0])) == pytest.approx(np.full((1, 2), 1.5))

@@ -59,7 +59,7 @@ def window_errors(standardised: Array, scale: Array, leads: NDArray[np.int64], l
     size = scale[:, leads].sum(axis=1)
     relative = summed / size[:, None]
     known = relative[np.isfinite(relative)]
-    if np.isfinite(relative).any(axis=0).sum() < 3 or not len(known):
+    if np.isfinite(relative).any(axis=0).sum() < 3 or not known.any():
         shape = plain_shape[:, :, leads].mean(axis=2)
         return WindowErrors(spread=size, unit=np.full_like(relative, np.nan), shape=shape, common=0.0)
     pooled = float(np.sqrt((known ** 2).mean()))
