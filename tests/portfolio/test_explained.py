@@ -95,6 +95,7 @@ def test_a_winner_that_fell_behind_or_level_is_said_to_have_done_so(after: float
              "edge_after": after, "edge_back": 8, "own_share": 0.3, "intermittent": 0}
     words = fit_words("blend", 9, facts, ("quarter", "quarters"))
     assert said in words
+    assert "Why not simply the winner? On each series" in fit_words("single", 9, facts, ("quarter", "quarters"))
     assert "until 8 quarters ago" in words
 
 

@@ -109,7 +109,7 @@ def fit_words(style: str, n_series: int, facts: Mapping[str, Any], period: tuple
         Singular and plural of the frequency's noun.
     """
     parts = [_blend_words(facts, n_series) if style == "blend" else _single_words(facts, n_series),
-             _half_words(facts["half"], period), _edge_words(facts, n_series, period)]
+             _half_words(facts["half"], period), _edge_words(style, facts, n_series, period)]
     parts.append(_range_words(n_series, facts["intermittent"]))
     return " ".join(part for part in parts if part)
 
@@ -148,13 +148,14 @@ def _half_words(half: int | None, period: tuple[str, str]) -> str:
             f"for the other half.")
 
 
-def _edge_words(facts: Mapping[str, Any], n_series: int, period: tuple[str, str]) -> str:
+def _edge_words(style: str, facts: Mapping[str, Any], n_series: int, period: tuple[str, str]) -> str:
     then, after = facts["edge_then"], facts["edge_after"]
     if then is None:
         return ""
     since = f"{percent(abs(after))} {'ahead' if after > 0 else 'behind'} since" if abs(after) >= 0.005 \
         else "level with it since"
-    return (f"Why not the winner alone? On {'each' if n_series > 1 else 'this'} series, the method that had missed "
+    why = "Why not the winner alone?" if style == "blend" else "Why not simply the winner?"
+    return (f"{why} On {'each' if n_series > 1 else 'this'} series, the method that had missed "
             f"least until {facts['edge_back']} {period[1]} ago was {percent(then)} ahead of the methods' average then, "
             f"and {since}: that is what a winner's lead is worth.")
 
