@@ -30,8 +30,8 @@ OWN_POWER = 0.5
 PULL = 0.03
 """Weight of the divergence from the prior while weights are learned: it keeps a method from being dropped by luck.
 
-Of .003, .01, .03 and .1 the one within half a percent of the best on the M- and M3-competitions and on both shifted
-back by a horizon; with .003 the blend gains a percent on the one and loses it on the other."""
+Settled on the M- and M3-competitions and both shifted back by a horizon: with .003 the blend's sMAPE was .3 % smaller
+on M and 1.1 % larger on M3 shifted."""
 
 CELLS = 6_000
 """Most errors that weights are learned from; beyond it, evenly spread ones serve as well."""

@@ -141,7 +141,7 @@ def windows_table(facts: CoverFacts, totals: pd.DataFrame) -> str:
 def bias_note(facts: CoverFacts, totals: pd.DataFrame) -> str:
     """Groups whose sums came out clearly above or below their past forecasts; empty where none did.
 
-    Judged over the shortest window of several periods, a step of 1 % from `BIASED` on.
+    Judged over the first window of several periods, from a share of `BIASED` on.
     """
     rows = totals[(totals["first"] != totals["last"]) & ~totals["scope"].isin(["all", "series"])]
     if facts.overall is None or rows.empty:
